@@ -1,0 +1,226 @@
+/**
+ * The operations on one key, gathered out of the history's columns into dense arrays of their own: what every
+ * decider works on.
+ *
+ * Refused operations stay out, and so do reads that are unsure (neither carries information). What remains is
+ * sorted by (start, end, input order), and *local* indices `0 … n-1` count in that order. It is a linear
+ * extension of precedence, and the operations of one client stand in session order in it.
+ *
+ * Times are doubles that compare exactly as the recorded nanoseconds do. `sureEnd` is the end by which every
+ * other host certainly knows the operation over: end + 2·clockError. Infinity where the request never came back
+ * or where the outcome is unsure does not matter: an unsure operation precedes nothing anyway.
+ */
+import {
+  ACKED,
+  CAS,
+  DELETE,
+  type History,
+  INCREMENT,
+  NO_VALUE,
+  READ,
+  REFUSED,
+  UNSURE,
+} from '../history/columns.js'
+
+export interface KeyHistory {
+  /** the key's id in the history */
+  readonly keyId: number
+  readonly n: number
+  /** local index → operation index in the history */
+  readonly operation: Int32Array
+  readonly client: Int32Array
+  /** clock: equal numbers mean one clock (as in History.host) */
+  readonly host: Int32Array
+  /** READ … DELETE */
+  readonly kind: Uint8Array
+  /** 1 acked, 0 unsure */
+  readonly acked: Uint8Array
+  /** cas: 0 when acked and the comparison failed; else 1 */
+  readonly applied: Uint8Array
+  /** value ids as in History */
+  readonly value: Int32Array
+  readonly extra: Int32Array
+  /** value id of a failed cas's `saw`, or NO_VALUE */
+  readonly saw: Int32Array
+  readonly start: Float64Array
+  /** Infinity when the request never came back */
+  readonly end: Float64Array
+  /** end + 2·clockError, comparable with `start` */
+  readonly sureEnd: Float64Array
+  /** value id of the initial value (NULL_VALUE where none is given), or NO_VALUE when it is unknown */
+  readonly initial: number
+  /** value ids that only refused writes or failed cas offered may stand here: every id offered without effect */
+  readonly offered: ReadonlySet<number>
+  /** true when the key's records, whatever their outcome, hold increments */
+  readonly hasIncrements: boolean
+  /** true when they hold writes, cas or deletes */
+  readonly hasWrites: boolean
+}
+
+/** Operations of a history by key: `operations[offset[k] … offset[k + 1])` are key k's, in input order. */
+export interface KeyIndex {
+  readonly offset: Int32Array
+  readonly operations: Int32Array
+}
+
+/** Groups the operations by key with one counting sort, O(operations + keys). */
+export function indexByKey(history: History): KeyIndex {
+  const keys = history.keys.size
+  const offset = new Int32Array(keys + 1)
+  const { key, count } = history
+  for (let i = 0; i < count; i++) offset[key[i] + 1]++
+  for (let k = 0; k < keys; k++) offset[k + 1] += offset[k]
+  const next = offset.slice(0, keys)
+  const operations = new Int32Array(count)
+  for (let i = 0; i < count; i++) operations[next[key[i]]++] = i
+  return { offset, operations }
+}
+
+/**
+ * Gathers one key. `clockErrorNs` is the bound to decide under, not necessarily the history's own.
+ * O(n log n) at worst, near O(n) on recordings that are nearly sorted.
+ */
+export function gatherKey(history: History, index: KeyIndex, keyId: number, clockErrorNs: bigint): KeyHistory {
+  const from = index.offset[keyId]
+  const to = index.offset[keyId + 1]
+  return gatherOperations(history, index.operations.subarray(from, to), keyId, clockErrorNs)
+}
+
+/** As `gatherKey`, over any operations of one key, given in input order. */
+export function gatherOperations(
+  history: History,
+  operations: Int32Array,
+  keyId: number,
+  clockErrorNs: bigint,
+): KeyHistory {
+  const { kind, outcome, applied, value, extra, saw } = history
+  const offered = new Set<number>()
+  let hasIncrements = false
+  let hasWrites = false
+  const kept = new Int32Array(operations.length)
+  let n = 0
+  for (const i of operations) {
+    const k = kind[i]
+    if (k === INCREMENT) hasIncrements = true
+    else if (k !== READ) hasWrites = true
+    if (outcome[i] === REFUSED || (k === CAS && applied[i] === 0)) {
+      if (k !== READ && k !== INCREMENT) offered.add(value[i])
+    }
+    if (outcome[i] === REFUSED || (k === READ && outcome[i] === UNSURE)) continue
+    kept[n++] = i
+  }
+  const times = gatherTimes(history, kept.subarray(0, n), clockErrorNs)
+  const order = sortedOrder(n, times.start, times.end)
+
+  const initial = history.initial.get(keyId)
+  const result = {
+    keyId,
+    n,
+    operation: new Int32Array(n),
+    client: new Int32Array(n),
+    host: new Int32Array(n),
+    kind: new Uint8Array(n),
+    acked: new Uint8Array(n),
+    applied: new Uint8Array(n),
+    value: new Int32Array(n),
+    extra: new Int32Array(n),
+    saw: new Int32Array(n).fill(NO_VALUE),
+    start: new Float64Array(n),
+    end: new Float64Array(n),
+    sureEnd: new Float64Array(n),
+    initial: initial ?? (history.initialUnknown ? NO_VALUE : 0),
+    offered,
+    hasIncrements,
+    hasWrites,
+  }
+  for (let p = 0; p < n; p++) {
+    const from = order[p]
+    const i = kept[from]
+    result.operation[p] = i
+    result.client[p] = history.client[i]
+    result.host[p] = history.host[i]
+    result.kind[p] = kind[i]
+    result.acked[p] = outcome[i] === ACKED ? 1 : 0
+    result.applied[p] = applied[i]
+    result.value[p] = kind[i] === DELETE ? 0 : value[i]
+    result.extra[p] = extra[i]
+    if (saw) result.saw[p] = saw[i]
+    result.start[p] = times.start[from]
+    result.end[p] = times.end[from]
+    result.sureEnd[p] = times.sureEnd[from]
+  }
+  return result
+}
+
+interface KeyTimes {
+  start: Float64Array
+  end: Float64Array
+  sureEnd: Float64Array
+}
+
+/** Times of the given operations as doubles that compare as the exact ones do. */
+function gatherTimes(history: History, operations: Int32Array, clockErrorNs: bigint): KeyTimes {
+  const n = operations.length
+  const start = new Float64Array(n)
+  const end = new Float64Array(n)
+  const sureEnd = new Float64Array(n)
+  const { startOffset, endOffset } = history.times
+  const uncertainty = 2n * clockErrorNs
+  if (startOffset && endOffset && uncertainty <= 2n ** 52n) {
+    const add = Number(uncertainty)
+    for (let p = 0; p < n; p++) {
+      const i = operations[p]
+      start[p] = startOffset[i]
+      end[p] = history.hasEnd[i] ? endOffset[i] : Number.POSITIVE_INFINITY
+      sureEnd[p] = end[p] + add
+    }
+    return { start, end, sureEnd }
+  }
+  return rankTimes(history, operations, uncertainty)
+}
+
+/** Spans that no double holds: every time is replaced by its rank among all that will be compared. */
+function rankTimes(history: History, operations: Int32Array, uncertainty: bigint): KeyTimes {
+  const n = operations.length
+  const exact: bigint[] = []
+  for (const i of operations) {
+    const startNs = history.times.startNs(i)
+    const endNs = history.hasEnd[i] ? history.times.endNs(i) : startNs
+    exact.push(startNs, endNs, endNs + uncertainty)
+  }
+  const distinct = [...new Set(exact)].sort((a, b) => (a < b ? -1 : a > b ? 1 : 0))
+  const rank = new Map(distinct.map((t, r) => [t, r]))
+  const start = new Float64Array(n)
+  const end = new Float64Array(n)
+  const sureEnd = new Float64Array(n)
+  for (let p = 0; p < n; p++) {
+    const open = history.hasEnd[operations[p]] === 0
+    start[p] = rank.get(exact[3 * p])!
+    end[p] = open ? Number.POSITIVE_INFINITY : rank.get(exact[3 * p + 1])!
+    sureEnd[p] = open ? Number.POSITIVE_INFINITY : rank.get(exact[3 * p + 2])!
+  }
+  return { start, end, sureEnd }
+}
+
+/** Positions sorted by (start, end, position). Recordings come nearly sorted: insertion first, within a bound. */
+function sortedOrder(n: number, start: Float64Array, end: Float64Array): Int32Array {
+  const order = new Int32Array(n)
+  for (let p = 0; p < n; p++) order[p] = p
+  const before = (a: number, b: number): boolean =>
+    start[a] < start[b] || (start[a] === start[b] && (end[a] < end[b] || (end[a] === end[b] && a < b)))
+  let work = 8 * n
+  for (let p = 1; p < n; p++) {
+    const moved = order[p]
+    let q = p - 1
+    while (q >= 0 && before(moved, order[q])) {
+      order[q + 1] = order[q]
+      q--
+      if (--work < 0) {
+        order[q + 1] = moved
+        return order.sort((a, b) => (before(a, b) ? -1 : 1))
+      }
+    }
+    order[q + 1] = moved
+  }
+  return order
+}
