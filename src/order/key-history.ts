@@ -23,6 +23,10 @@ import {
 } from '../history/columns.js'
 
 export interface KeyHistory {
+  /** where it was gathered from, for exact times and names */
+  readonly history: History
+  /** the clock error that it was gathered under, in nanoseconds */
+  readonly clockErrorNs: bigint
   /** the key's id in the history */
   readonly keyId: number
   readonly n: number
@@ -80,7 +84,12 @@ export function indexByKey(history: History): KeyIndex {
  * Gathers one key. `clockErrorNs` is the bound to decide under, not necessarily the history's own.
  * O(n log n) at worst, near O(n) on recordings that are nearly sorted.
  */
-export function gatherKey(history: History, index: KeyIndex, keyId: number, clockErrorNs: bigint): KeyHistory {
+export function gatherKey(
+  history: History,
+  index: KeyIndex,
+  keyId: number,
+  clockErrorNs: bigint,
+): KeyHistory {
   const from = index.offset[keyId]
   const to = index.offset[keyId + 1]
   return gatherOperations(history, index.operations.subarray(from, to), keyId, clockErrorNs)
@@ -114,6 +123,8 @@ export function gatherOperations(
 
   const initial = history.initial.get(keyId)
   const result = {
+    history,
+    clockErrorNs,
     keyId,
     n,
     operation: new Int32Array(n),

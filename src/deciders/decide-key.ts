@@ -1,0 +1,45 @@
+/**
+ * One promise on one key: which decider answers, by the kind of the key.
+ */
+import type { Values } from '../history/columns.js'
+import { countPairs } from '../order/counting.js'
+import type { KeyHistory } from '../order/key-history.js'
+import { isUntested } from '../order/untested.js'
+import type { PairRule } from '../promises/promise.js'
+import { decideCounter } from './counter.js'
+import type { Decision } from './decision.js'
+import { ambiguityReason, decideRegister } from './register.js'
+
+/** register: no increments; counter: increments and reads only; mixed: increments with writes, cas or deletes. */
+export type KeyKind = 'register' | 'counter' | 'mixed'
+
+/** What kind a key is goes by its records, whatever their outcome. */
+export function kindOfKey(key: KeyHistory): KeyKind {
+  if (!key.hasIncrements) return 'register'
+  return key.hasWrites ? 'mixed' : 'counter'
+}
+
+/** Decides whether the promise holds on the key. Never a guess: what no decider settles is `undecided`. */
+export function decideKey(key: KeyHistory, values: Values, rule: PairRule): Decision {
+  const counting = countPairs(key, rule)
+  switch (kindOfKey(key)) {
+    case 'register': {
+      const outcome = decideRegister(counting)
+      if (outcome.verdict === 'broken') return { verdict: 'broken' }
+      if (outcome.verdict === 'ambiguous') {
+        return { verdict: 'undecided', reason: ambiguityReason(counting, outcome.versions) }
+      }
+      return { verdict: 'holds', untested: isUntested(counting) }
+    }
+    case 'counter': {
+      const outcome = decideCounter(counting, values)
+      if (outcome.verdict === 'broken') return { verdict: 'broken' }
+      if (outcome.verdict === 'several-sizes') {
+        return { verdict: 'undecided', reason: 'its increments are of several sizes' }
+      }
+      return { verdict: 'holds', untested: isUntested(counting) }
+    }
+    case 'mixed':
+      return { verdict: 'undecided', reason: 'it mixes increments with writes, cas or deletes' }
+  }
+}

@@ -1,0 +1,171 @@
+/**
+ * The counted pairs between the versions of a key, as interval orders.
+ *
+ * A pair class (a in some roles, b in some roles, a scope) is on any one clock an interval order of the
+ * versions: V → W exactly when the least end of V's a's lies before the greatest start of W's b's. Three kinds
+ * of clock cover precedence: all operations by their certain ends, one host's by their recorded ends, one
+ * client's by their place in its session.
+ */
+import type { Role, Scope } from '../promises/promise.js'
+import { type Counting, scopeOf } from './counting.js'
+import type { IntervalOrder } from './interval-orders.js'
+import { isRead, isWrite } from './roles.js'
+import type { Versions } from './versions.js'
+
+const READS = 1
+const WRITES = 2
+
+interface PairClass {
+  /** READS | WRITES: the roles of a, of b */
+  a: number
+  b: number
+  scope: Scope
+}
+
+/** The classes that the rule counts on this key, those of one scope joined where that loses nothing. */
+function pairClasses({ key, rule }: Counting): PairClass[] {
+  const classes: PairClass[] = []
+  for (const ra of ['write', 'read'] as const satisfies readonly Role[]) {
+    for (const rb of ['write', 'read'] as const satisfies readonly Role[]) {
+      const scope = scopeOf(key, rule, ra, rb)
+      if (scope === 'none') continue
+      const a = ra === 'write' ? WRITES : READS
+      const b = rb === 'write' ? WRITES : READS
+      const same = classes.find((c) => c.scope === scope && c.a === a)
+      if (same) same.b |= b
+      else classes.push({ a, b, scope })
+    }
+  }
+  for (let i = classes.length - 1; i > 0; i--) {
+    const other = classes.findIndex((c, j) => j < i && c.scope === classes[i].scope && c.b === classes[i].b)
+    if (other < 0) continue
+    classes[other].a |= classes[i].a
+    classes.splice(i, 1)
+  }
+  return classes
+}
+
+/**
+ * The interval orders of the versions under the promise, with units as `unitOf` maps versions to them (blocks
+ * of versions, or the identity). O(n · classes).
+ */
+export function versionOrders(counting: Counting, versions: Versions, unitOf: Int32Array): IntervalOrder[] {
+  const { key } = counting
+  const clocks = clocksOf(counting)
+  const orders: IntervalOrder[] = []
+  for (const pairs of pairClasses(counting)) {
+    const { scope } = pairs
+    const all = new Int32Array(key.n)
+    const closing = scope === 'closing' ? counting.closing : undefined
+    const build = (members: Int32Array, end: Float64Array, start: Float64Array): void => {
+      const order = buildOrder(counting, versions, unitOf, pairs, members, end, start, closing)
+      if (order) orders.push(order)
+    }
+    if (scope !== 'session') {
+      for (let p = 0; p < key.n; p++) all[p] = p
+      const sure = scope === 'late' ? counting.delays!.sureEnd : key.sureEnd
+      build(all, sure, key.start)
+      const own = scope === 'late' ? counting.delays!.end : key.end
+      for (const members of clocks.hosts) build(members, own, key.start)
+      if (scope === 'late') {
+        for (const members of clocks.clients) build(members, own, key.start)
+        continue
+      }
+    }
+    const sessions = scope === 'session' ? clocks.everyClient : clocks.clients
+    for (const members of sessions) build(members, clocks.place, clocks.place)
+  }
+  return orders
+}
+
+interface Clocks {
+  /** local indices of each host that several clients share, where the clock error makes a difference */
+  hosts: Int32Array[]
+  /** local indices of each client whose session order adds pairs to the other clocks' */
+  clients: Int32Array[]
+  everyClient: Int32Array[]
+  /** local index as a time: session order within a client */
+  place: Float64Array
+}
+
+function clocksOf({ key }: Counting): Clocks {
+  const { n } = key
+  let hasClockError = false
+  for (let p = 0; p < n && !hasClockError; p++) hasClockError = key.sureEnd[p] !== key.end[p]
+  const byClient = groupBy(key.client)
+  const everyClient = [...byClient.values()].filter((members) => members.length > 1)
+  const touches = (members: Int32Array): boolean =>
+    members.some((p, i) => i > 0 && key.end[members[i - 1]] === key.start[p])
+  const clients = everyClient.filter((members) => hasClockError || touches(members))
+  const hosts: Int32Array[] = []
+  if (hasClockError) {
+    for (const members of groupBy(key.host).values()) {
+      if (members.some((p) => key.client[p] !== key.client[members[0]])) hosts.push(members)
+    }
+  }
+  return { hosts, clients, everyClient, place: Float64Array.from({ length: n }, (_, p) => p) }
+}
+
+function groupBy(ids: Int32Array): Map<number, Int32Array> {
+  const groups = new Map<number, number[]>()
+  for (let p = 0; p < ids.length; p++) {
+    const members = groups.get(ids[p])
+    if (members) members.push(p)
+    else groups.set(ids[p], [p])
+  }
+  return new Map([...groups].map(([id, members]) => [id, Int32Array.from(members)]))
+}
+
+/** One pair class on one clock, or undefined where it has no pair. */
+function buildOrder(
+  { key }: Counting,
+  versions: Versions,
+  unitOf: Int32Array,
+  pairs: PairClass,
+  members: Int32Array,
+  end: Float64Array,
+  start: Float64Array,
+  closing: Uint8Array | undefined,
+): IntervalOrder | undefined {
+  const entryOf = new Map<number, number>()
+  const unit: number[] = []
+  const minEnd: number[] = []
+  const maxStart: number[] = []
+  let leastEnd = Number.POSITIVE_INFINITY
+  let greatestStart = Number.NEGATIVE_INFINITY
+  const add = (version: number, p: number, isA: boolean, isB: boolean): void => {
+    if (version < 0 || !(isA || isB)) return
+    const u = unitOf[version]
+    let e = entryOf.get(u)
+    if (e === undefined) {
+      e = unit.length
+      entryOf.set(u, e)
+      unit.push(u)
+      minEnd.push(Number.POSITIVE_INFINITY)
+      maxStart.push(Number.NEGATIVE_INFINITY)
+    }
+    if (isA && end[p] < minEnd[e]) {
+      minEnd[e] = end[p]
+      if (end[p] < leastEnd) leastEnd = end[p]
+    }
+    if (isB && start[p] > maxStart[e]) {
+      maxStart[e] = start[p]
+      if (start[p] > greatestStart) greatestStart = start[p]
+    }
+  }
+  for (const p of members) {
+    const acked = key.acked[p] === 1
+    if (isWrite(key, p))
+      add(versions.writeOf[p], p, acked && (pairs.a & WRITES) !== 0, (pairs.b & WRITES) !== 0)
+    if (isRead(key, p)) {
+      const isB = (pairs.b & READS) !== 0 && (closing === undefined || closing[p] === 1)
+      add(versions.readOf[p], p, (pairs.a & READS) !== 0, isB)
+    }
+  }
+  if (!(leastEnd < greatestStart)) return undefined
+  return {
+    unit: Int32Array.from(unit),
+    minEnd: Float64Array.from(minEnd),
+    maxStart: Float64Array.from(maxStart),
+  }
+}
