@@ -46,6 +46,7 @@ export function initialFirst(blocks: Blocks): IntervalOrder {
   const { count } = blocks
   const first = blocks.blockOf[0]
   return {
+    inSession: true,
     unit: Int32Array.from({ length: count }, (_, b) => b),
     minEnd: Float64Array.from({ length: count }, (_, b) => (b === first ? 0 : Number.POSITIVE_INFINITY)),
     maxStart: Float64Array.from({ length: count }, (_, b) => (b === first ? Number.NEGATIVE_INFINITY : 1)),

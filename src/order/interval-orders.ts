@@ -10,6 +10,8 @@
 
 /** One clock's view. Entry arrays are parallel; a unit has at most one entry in an order. */
 export interface IntervalOrder {
+  /** true where the numbers are places in a session, not times */
+  readonly inSession: boolean
   /** entry → unit */
   readonly unit: Int32Array
   /** entry → the end after which every later start of this order must wait for this unit; Infinity: never */
@@ -70,6 +72,7 @@ export function cyclicCore(units: number, orders: readonly IntervalOrder[]): Int
   const only = new Uint8Array(units)
   for (const u of forward.stuck) only[u] = 1
   const reversed = orders.map((o) => ({
+    inSession: o.inSession,
     unit: o.unit,
     minEnd: o.maxStart.map((t) => -t),
     maxStart: o.minEnd.map((t) => -t),

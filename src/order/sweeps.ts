@@ -61,8 +61,8 @@ export class GreatestBefore {
       greatest = this.#greatest
       const members = byHost.get(key.host[b])
       if (members) {
-        let host = this.#hosts.get(key.host[b])
-        if (!host) this.#hosts.set(key.host[b], (host = { next: 0, greatest: Number.NEGATIVE_INFINITY }))
+        const host = this.#hosts.get(key.host[b]) ?? { next: 0, greatest: Number.NEGATIVE_INFINITY }
+        this.#hosts.set(key.host[b], host)
         while (host.next < members.length && this.#own[members[host.next]] < start) {
           host.greatest = this.#max(host.greatest, members[host.next++])
         }
@@ -141,9 +141,11 @@ export class LeastAfter {
       least = this.#least
       const members = byHost.get(key.host[a])
       if (members) {
-        let host = this.#hosts.get(key.host[a])
-        if (!host)
-          this.#hosts.set(key.host[a], (host = { next: members.length - 1, least: Number.POSITIVE_INFINITY }))
+        const host = this.#hosts.get(key.host[a]) ?? {
+          next: members.length - 1,
+          least: Number.POSITIVE_INFINITY,
+        }
+        this.#hosts.set(key.host[a], host)
         while (host.next >= 0 && key.start[members[host.next]] > this.#own[a]) {
           host.least = this.#min(host.least, members[host.next--])
         }
@@ -167,7 +169,7 @@ export class LeastAfter {
 
   #min(least: number, b: number): number {
     if (this.#scope === 'closing' && this.#counting.closing![b] === 0) return least
-    return this.#level[b] < least ? this.#level[b] : least
+    return Math.min(this.#level[b], least)
   }
 }
 

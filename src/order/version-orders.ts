@@ -23,10 +23,11 @@ interface PairClass {
 }
 
 /** The classes that the rule counts on this key, those of one scope joined where that loses nothing. */
-function pairClasses({ key, rule }: Counting): PairClass[] {
+function pairClasses({ key, rule }: Counting, onlyBeforeWrites: boolean): PairClass[] {
   const classes: PairClass[] = []
   for (const ra of ['write', 'read'] as const satisfies readonly Role[]) {
     for (const rb of ['write', 'read'] as const satisfies readonly Role[]) {
+      if (onlyBeforeWrites && rb === 'read') continue
       const scope = scopeOf(key, rule, ra, rb)
       if (scope === 'none') continue
       const a = ra === 'write' ? WRITES : READS
@@ -47,18 +48,24 @@ function pairClasses({ key, rule }: Counting): PairClass[] {
 
 /**
  * The interval orders of the versions under the promise, with units as `unitOf` maps versions to them (blocks
- * of versions, or the identity). O(n · classes).
+ * of versions, or the identity); `onlyBeforeWrites`: only the pairs whose b is a write. O(n · classes).
  */
-export function versionOrders(counting: Counting, versions: Versions, unitOf: Int32Array): IntervalOrder[] {
+export function versionOrders(
+  counting: Counting,
+  versions: Versions,
+  unitOf: Int32Array,
+  onlyBeforeWrites = false,
+): IntervalOrder[] {
   const { key } = counting
   const clocks = clocksOf(counting)
   const orders: IntervalOrder[] = []
-  for (const pairs of pairClasses(counting)) {
+  for (const pairs of pairClasses(counting, onlyBeforeWrites)) {
     const { scope } = pairs
     const all = new Int32Array(key.n)
     const closing = scope === 'closing' ? counting.closing : undefined
     const build = (members: Int32Array, end: Float64Array, start: Float64Array): void => {
-      const order = buildOrder(counting, versions, unitOf, pairs, members, end, start, closing)
+      const inSession = start === clocks.place
+      const order = buildOrder(counting, versions, unitOf, pairs, members, { end, start, inSession }, closing)
       if (order) orders.push(order)
     }
     if (scope !== 'session') {
@@ -123,8 +130,7 @@ function buildOrder(
   unitOf: Int32Array,
   pairs: PairClass,
   members: Int32Array,
-  end: Float64Array,
-  start: Float64Array,
+  { end, start, inSession }: { end: Float64Array; start: Float64Array; inSession: boolean },
   closing: Uint8Array | undefined,
 ): IntervalOrder | undefined {
   const entryOf = new Map<number, number>()
@@ -164,6 +170,7 @@ function buildOrder(
   }
   if (!(leastEnd < greatestStart)) return undefined
   return {
+    inSession,
     unit: Int32Array.from(unit),
     minEnd: Float64Array.from(minEnd),
     maxStart: Float64Array.from(maxStart),

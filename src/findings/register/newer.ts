@@ -1,0 +1,248 @@
+/**
+ * Which versions are newer than which (findings.md): w(V) ≺ w(W), or a sound read of V ≺ w(W), or W's cas found
+ * V, or V is the initial version; chained.
+ *
+ * The direct pairs are interval orders again, so what is newer than a version is found by a search that skips
+ * whole ranges of starts. A search stops at `REACH_LIMIT` versions: on keys where a read is staler than that,
+ * chains that leave the nearest versions are not followed (the verdict never depends on it, only the choice
+ * between kinds could).
+ */
+import type { Counting } from '../../order/counting.js'
+import { counts } from '../../order/counting.js'
+import type { IntervalOrder } from '../../order/interval-orders.js'
+import { isRead } from '../../order/roles.js'
+import { versionOrders } from '../../order/version-orders.js'
+import type { Versions } from '../../order/versions.js'
+import type { Link } from '../raw-finding.js'
+
+const REACH_LIMIT = 4096
+
+/** Operations of each version: `operations[offset[v] … offset[v + 1])`, local indices in local order. */
+export interface Members {
+  readonly offset: Int32Array
+  readonly operations: Int32Array
+}
+
+/** The write of each version first, then its reads in local order. */
+export function membersOf(counting: Counting, versions: Versions): Members {
+  const { n } = counting.key
+  const { count, readOf, writer } = versions
+  const offset = new Int32Array(count + 1)
+  for (let v = 0; v < count; v++) if (writer[v] >= 0) offset[v + 1]++
+  for (let p = 0; p < n; p++) if (readOf[p] >= 0) offset[readOf[p] + 1]++
+  for (let v = 0; v < count; v++) offset[v + 1] += offset[v]
+  const next = offset.slice(0, count)
+  const operations = new Int32Array(offset[count])
+  for (let v = 0; v < count; v++) if (writer[v] >= 0) operations[next[v]++] = writer[v]
+  for (let p = 0; p < n; p++) if (readOf[p] >= 0) operations[next[readOf[p]]++] = p
+  return { offset, operations }
+}
+
+/** What is newer than one version, as far as a search went. */
+export interface Reach {
+  /** newer version → the version that the search came from */
+  readonly from: ReadonlyMap<number, number>
+  /** true when the search stopped at its limit */
+  readonly cut: boolean
+}
+
+export class Newer {
+  readonly counting: Counting
+  readonly versions: Versions
+  readonly members: Members
+  /** local index → 1 for a read that is not wrong by itself */
+  readonly sound: Uint8Array
+  /** version → 1 where its own cas is blamed, which then says nothing about order */
+  readonly blamedCas: Uint8Array
+  readonly #orders: SearchOrder[]
+  /** version → versions whose cas found it */
+  readonly #foundBy: Map<number, number[]>
+  readonly #reaches = new Map<number, { limit: number; reach: Reach }>()
+
+  constructor(counting: Counting, versions: Versions, blamedCas?: Uint8Array) {
+    this.counting = counting
+    this.versions = versions
+    this.members = membersOf(counting, versions)
+    const { n } = counting.key
+    this.sound = new Uint8Array(n)
+    const readOf = versions.readOf.slice()
+    for (const p of versions.wrongReads) readOf[p] = -1
+    for (let p = 0; p < n; p++) if (readOf[p] >= 0) this.sound[p] = 1
+    this.blamedCas = blamedCas ?? new Uint8Array(versions.count).fill(1)
+    const identity = Int32Array.from({ length: versions.count }, (_, v) => v)
+    const writesOnly = versionOrders(counting, { ...versions, readOf }, identity, true)
+    this.#orders = writesOnly.map((order) => new SearchOrder(order, versions.count))
+    this.#foundBy = new Map()
+    for (let v = 0; v < versions.count; v++) {
+      const u = versions.found[v]
+      if (u < 0) continue
+      const others = this.#foundBy.get(u)
+      if (others) others.push(v)
+      else this.#foundBy.set(u, [v])
+    }
+  }
+
+  /** The versions newer than `version` whose write starts before the version's last read does. */
+  reach(version: number): Reach {
+    const { key } = this.counting
+    const { offset, operations } = this.members
+    let limit = Number.NEGATIVE_INFINITY
+    for (let i = offset[version]; i < offset[version + 1]; i++)
+      limit = Math.max(limit, key.start[operations[i]])
+    return this.reachUntil(version, limit)
+  }
+
+  /** The versions newer than `version` whose write starts before `limit`, in order of the search. */
+  reachUntil(version: number, limit: number): Reach {
+    const known = this.#reaches.get(version)
+    if (known && known.limit >= limit) return known.reach
+    const { found, writer, count } = this.versions
+    const { key } = this.counting
+    const from = new Map<number, number>()
+    const queue = [version]
+    const visit = (w: number, origin: number): void => {
+      if (w === version || w === 0 || from.has(w) || key.start[writer[w]] >= limit) return
+      from.set(w, origin)
+      queue.push(w)
+    }
+    const searched = new Int32Array(this.#orders.length).fill(-1)
+    const expanded = new Set<number>()
+    let cut = false
+    for (let head = 0; head < queue.length && !cut; head++) {
+      // Whatever is newer than what V's own cas found is newer than V, unless that cas is itself blamed.
+      for (let v = queue[head]; v >= 0 && !expanded.has(v); v = this.blamedCas[v] ? -1 : found[v]) {
+        expanded.add(v)
+        if (v === 0) for (let w = 1; w < count && from.size < REACH_LIMIT; w++) visit(w, queue[head])
+        for (const w of this.#foundBy.get(v) ?? []) visit(w, queue[head])
+        for (let o = 0; o < this.#orders.length; o++) {
+          const order = this.#orders[o]
+          const least = order.leastEndOf(v)
+          if (least === Number.POSITIVE_INFINITY) continue
+          const first = order.firstAfter(least)
+          const stop = searched[o] < 0 ? order.stopAt(limit) : searched[o]
+          for (let i = first; i < stop && from.size < REACH_LIMIT; i++) visit(order.unitAt(i), queue[head])
+          if (first < stop) searched[o] = first
+        }
+      }
+      cut = from.size >= REACH_LIMIT
+    }
+    const reach = { from, cut }
+    this.#reaches.set(version, { limit, reach })
+    return reach
+  }
+
+  /** The links that show `newer` to be newer than `version`, from the latter to the former. */
+  path(version: number, newer: number): Link[] {
+    const { from } = this.reach(version)
+    const steps: number[] = [newer]
+    for (let v = newer; v !== version; ) {
+      v = from.get(v)!
+      steps.push(v)
+    }
+    steps.reverse()
+    return steps.slice(1).map((w, i) => this.#link(steps[i], w))
+  }
+
+  /** Whether W is newer than V. */
+  isNewer(w: number, v: number): boolean {
+    const { key } = this.counting
+    const writer = this.versions.writer[w]
+    return writer >= 0 && this.reachUntil(v, nextAfter(key.start[writer])).from.has(w)
+  }
+
+  /** How much clock error a pair survives, in the key's own time; Infinity when no clock explains it. */
+  pairSlack(before: number, after: number): number {
+    const { key } = this.counting
+    if (key.client[before] === key.client[after] || key.host[before] === key.host[after]) {
+      return Number.POSITIVE_INFINITY
+    }
+    return key.start[after] - key.end[before]
+  }
+
+  /** The best direct link from version v to version w (or through what v's cas found). */
+  #link(v: number, w: number): Link {
+    const { found, writer } = this.versions
+    for (let u = v; u >= 0; u = found[u]) {
+      const link = this.#directLink(u, w)
+      if (link) return link
+      if (this.blamedCas[u]) break
+    }
+    return { type: 'initial', before: -1, after: writer[w] }
+  }
+
+  #directLink(v: number, w: number): Link | undefined {
+    const { counting, versions, members, sound } = this
+    const after = versions.writer[w]
+    if (versions.found[w] === v) return { type: 'found', before: versions.writer[v], after }
+    let best: Link | undefined
+    let bestSlack = Number.NEGATIVE_INFINITY
+    const end = Math.min(members.offset[v + 1], members.offset[v] + 256)
+    for (let i = members.offset[v]; i < end; i++) {
+      const before = members.operations[i]
+      const isOwnWrite = versions.writeOf[before] === v
+      if (!isOwnWrite && !(sound[before] && isRead(counting.key, before))) continue
+      if (!counts(counting, before, isOwnWrite ? 'write' : 'read', after, 'write')) continue
+      const link: Link = { type: 'pair', before, after }
+      const slack = this.pairSlack(before, after)
+      if (slack > bestSlack) {
+        best = link
+        bestSlack = slack
+      }
+    }
+    if (!best && v === 0) return { type: 'initial', before: -1, after }
+    return best
+  }
+}
+
+/** A limit that lets in what starts at `time`. */
+function nextAfter(time: number): number {
+  return time + 0.5
+}
+
+/** An interval order of versions, searchable by start. */
+class SearchOrder {
+  readonly #order: IntervalOrder
+  readonly #entryOf: Int32Array
+  readonly #byStart: Int32Array
+
+  constructor(order: IntervalOrder, versions: number) {
+    this.#order = order
+    this.#entryOf = new Int32Array(versions).fill(-1)
+    for (let e = 0; e < order.unit.length; e++) this.#entryOf[order.unit[e]] = e
+    const { maxStart } = order
+    this.#byStart = Int32Array.from(maxStart.keys()).sort((a, b) =>
+      maxStart[a] < maxStart[b] ? -1 : maxStart[a] > maxStart[b] ? 1 : a - b,
+    )
+  }
+
+  leastEndOf(version: number): number {
+    const e = this.#entryOf[version]
+    return e < 0 ? Number.POSITIVE_INFINITY : this.#order.minEnd[e]
+  }
+
+  unitAt(i: number): number {
+    return this.#order.unit[this.#byStart[i]]
+  }
+
+  /** Place of the first start after `time`. */
+  firstAfter(time: number): number {
+    return this.#search((start) => start <= time)
+  }
+
+  /** Place of the first start at or after `time`, where this order tells time. */
+  stopAt(time: number): number {
+    return this.#order.inSession ? this.#byStart.length : this.#search((start) => start < time)
+  }
+
+  #search(isBefore: (start: number) => boolean): number {
+    const { maxStart } = this.#order
+    let low = 0
+    let high = this.#byStart.length
+    while (low < high) {
+      const middle = (low + high) >> 1
+      if (isBefore(maxStart[this.#byStart[middle]])) low = middle + 1
+      else high = middle
+    }
+    return low
+  }
+}
