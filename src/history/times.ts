@@ -2,12 +2,13 @@
  * The start and end of every operation, exact to the nanosecond.
  *
  * Times lie anywhere in ±2^63 ns, a double holds whole numbers to 2^53. So the columns are nanoseconds after
- * the first time that was added, in doubles, as long as every one of them is exact there (104 days); from the
- * first time further away they are 64-bit integers.
+ * the first time that was added, in doubles, as long as every one of them is within 2^52 ns (52 days) of it;
+ * from the first time further away they are 64-bit integers.
  */
 
-/** The largest offset in nanoseconds, either way, for which sums of two stay exact in a double. */
-const NARROW_LIMIT = 2 ** 52
+/** Whole seconds for which nanoseconds after the base stay within 2^52. */
+const NARROW_SECONDS = 4_503_599
+const NANOS = 1_000_000_000
 
 export interface Times {
   /** Nanoseconds since the epoch that offsets count from; 0n while there are no operations. */
@@ -20,14 +21,31 @@ export interface Times {
   endNs(i: number): bigint
 }
 
+/**
+ * A time as two whole numbers that doubles hold exactly: seconds (rounded down) and nanoseconds 0 … 999,999,999.
+ */
+export interface Instant {
+  seconds: number
+  nanos: number
+}
+
+/** The nanoseconds since the epoch of an instant. */
+export function instantNs({ seconds, nanos }: Instant): bigint {
+  return BigInt(seconds) * 1_000_000_000n + BigInt(nanos)
+}
+
 /** Growing columns of times. */
 export class TimesBuilder implements Times {
-  baseNs = 0n
+  readonly #base: Instant = { seconds: 0, nanos: 0 }
   #count = 0
   #narrowStart: Float64Array | undefined = new Float64Array(1024)
   #narrowEnd: Float64Array | undefined = new Float64Array(1024)
   #wideStart = new BigInt64Array(0)
   #wideEnd = new BigInt64Array(0)
+
+  get baseNs(): bigint {
+    return instantNs(this.#base)
+  }
 
   get startOffset(): Float64Array | undefined {
     return this.#narrowStart
@@ -46,45 +64,45 @@ export class TimesBuilder implements Times {
   }
 
   /** Adds the times of the next operation; without an end pass its start. */
-  push(startNs: bigint, endNs: bigint): void {
-    if (this.#count === 0) this.baseNs = startNs
+  push(start: Instant, end: Instant): void {
+    if (this.#count === 0) {
+      this.#base.seconds = start.seconds
+      this.#base.nanos = start.nanos
+    }
     const i = this.#count++
     if (this.#narrowStart && this.#narrowEnd) {
       if (i === this.#narrowStart.length) {
         this.#narrowStart = grown(this.#narrowStart, new Float64Array(i * 2))
         this.#narrowEnd = grown(this.#narrowEnd, new Float64Array(i * 2))
       }
+      if (this.#isNarrow(start)) this.#narrowStart[i] = this.#offset(start)
+      else this.#widen()
     } else if (i === this.#wideStart.length) {
       this.#wideStart = grown(this.#wideStart, new BigInt64Array(i * 2))
       this.#wideEnd = grown(this.#wideEnd, new BigInt64Array(i * 2))
     }
-    this.#setStart(i, startNs)
-    this.setEnd(i, endNs)
+    if (!this.#narrowStart) this.#wideStart[i] = instantNs(start)
+    this.setEnd(i, end)
   }
 
   /** Replaces the end of operation `i` (its closing half has come). */
-  setEnd(i: number, endNs: bigint): void {
+  setEnd(i: number, end: Instant): void {
     if (this.#narrowEnd) {
-      const offset = endNs - this.baseNs
-      if (isNarrow(offset)) {
-        this.#narrowEnd[i] = Number(offset)
+      if (this.#isNarrow(end)) {
+        this.#narrowEnd[i] = this.#offset(end)
         return
       }
       this.#widen()
     }
-    this.#wideEnd[i] = endNs
+    this.#wideEnd[i] = instantNs(end)
   }
 
-  #setStart(i: number, startNs: bigint): void {
-    if (this.#narrowStart) {
-      const offset = startNs - this.baseNs
-      if (isNarrow(offset)) {
-        this.#narrowStart[i] = Number(offset)
-        return
-      }
-      this.#widen()
-    }
-    this.#wideStart[i] = startNs
+  #isNarrow({ seconds }: Instant): boolean {
+    return Math.abs(seconds - this.#base.seconds) < NARROW_SECONDS
+  }
+
+  #offset({ seconds, nanos }: Instant): number {
+    return (seconds - this.#base.seconds) * NANOS + (nanos - this.#base.nanos)
   }
 
   #widen(): void {
@@ -92,17 +110,14 @@ export class TimesBuilder implements Times {
     const ends = this.#narrowEnd!
     this.#wideStart = new BigInt64Array(starts.length)
     this.#wideEnd = new BigInt64Array(ends.length)
+    const base = this.baseNs
     for (let i = 0; i < this.#count; i++) {
-      this.#wideStart[i] = this.baseNs + BigInt(starts[i])
-      this.#wideEnd[i] = this.baseNs + BigInt(ends[i])
+      this.#wideStart[i] = base + BigInt(starts[i])
+      this.#wideEnd[i] = base + BigInt(ends[i])
     }
     this.#narrowStart = undefined
     this.#narrowEnd = undefined
   }
-}
-
-function isNarrow(offset: bigint): boolean {
-  return offset <= NARROW_LIMIT && offset >= -NARROW_LIMIT
 }
 
 function grown<A extends Float64Array | BigInt64Array>(old: A, larger: A): A {

@@ -3,9 +3,9 @@
  * unrefused write or of the initial value, not all of one.
  */
 import { NO_VALUE, type Values } from '../../history/columns.js'
+import { objectMembers } from '../../history/object-members.js'
 import type { KeyHistory } from '../../order/key-history.js'
 import { isWrite } from '../../order/roles.js'
-import { objectMembers } from '../object-members.js'
 
 /** Which writes a torn row was put together from; -1 stands for the initial value. Local indices, few as can be. */
 export class TornRows {

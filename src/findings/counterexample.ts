@@ -1,0 +1,195 @@
+/**
+ * The smallest set of operations that breaks a promise alone.
+ *
+ * Starts from a finding's evidence (from the whole key where the evidence does not do) and takes away what it can
+ * (Zeller and Hildebrandt 2002, on closed subsets): an operation goes together with what depends on it, and what
+ * is left must still be broken by the decider's word; an undecided rest counts as mended.
+ */
+
+import { decideKey } from '../deciders/decide-key.js'
+import { INCREMENT, type Values } from '../history/columns.js'
+import { type Counting, counts } from '../order/counting.js'
+import { sizeOf } from '../order/counts.js'
+import type { KeyHistory } from '../order/key-history.js'
+import { gatherOperations } from '../order/key-history.js'
+import { isRead } from '../order/roles.js'
+import { findVersions } from '../order/versions.js'
+import type { RawFinding } from './raw-finding.js'
+import { WithExtraValue } from './with-extra-value.js'
+
+export interface Counterexample {
+  /** operation indices in input order */
+  readonly operations: readonly number[]
+  /** a counter's count at its starting read, for the header's `initial`; undefined: the key's own initial value */
+  readonly initialCount: bigint | undefined
+}
+
+/** The counterexample of a finding, irreducible, or undefined when no subset could be confirmed as broken. */
+export function findCounterexample(
+  counting: Counting,
+  values: Values,
+  finding: RawFinding,
+): Counterexample | undefined {
+  const judge = new Judge(counting, values)
+  if (counting.key.hasIncrements) return counterCounterexample(judge, finding)
+  const dependents = registerDependents(counting, finding)
+  const evidence = finding.exhibits.map(({ operation }) => operation)
+  const start = judge.isBroken(evidence) ? evidence : everything(counting.key)
+  if (!judge.isBroken(start)) return undefined
+  return { operations: shrink(start, judge, dependents), initialCount: undefined }
+}
+
+/** Which other operations must go when one goes. */
+type Dependents = (removed: number, among: ReadonlySet<number>) => Iterable<number>
+
+function counterCounterexample(judge: Judge, finding: RawFinding): Counterexample | undefined {
+  const { key } = judge
+  const evidence = finding.exhibits.map(({ operation }) => operation)
+  const { from, fromCount } = finding.bounds ?? {}
+  const attempts: { operations: number[]; starting: number; initialCount: bigint | undefined }[] = []
+  if (from === undefined) {
+    attempts.push({ operations: evidence, starting: -1, initialCount: undefined })
+  } else {
+    const p = judge.localOf(from)
+    const own = key.kind[p] === INCREMENT ? sizeOf(key, judge.values, p) : 0n
+    const at = { starting: from, initialCount: fromCount! - own }
+    if (finding.kind === 'backward-counter') {
+      const inFlight = judge.incrementNotBefore(p)
+      if (inFlight >= 0) attempts.push({ ...at, operations: [...evidence, inFlight] })
+    }
+    attempts.push({ ...at, operations: evidence })
+  }
+  attempts.push({ operations: everything(key), starting: -1, initialCount: undefined })
+  for (const { operations, starting, initialCount } of attempts) {
+    judge.start(initialCount)
+    if (!judge.isBroken(operations)) continue
+    return {
+      operations: shrink(operations, judge, counterDependents(judge, starting), starting),
+      initialCount,
+    }
+  }
+  return undefined
+}
+
+function everything(key: KeyHistory): number[] {
+  return Array.from(key.operation).sort((a, b) => a - b)
+}
+
+/** Decides subsets of one key under one promise. */
+class Judge {
+  readonly counting: Counting
+  readonly key: KeyHistory
+  values: Values
+  readonly #own: Values
+  readonly #local: Map<number, number>
+  #initial: number | undefined
+
+  constructor(counting: Counting, values: Values) {
+    this.counting = counting
+    this.key = counting.key
+    this.values = values
+    this.#own = values
+    this.#local = new Map(Array.from(this.key.operation, (i, p) => [i, p]))
+  }
+
+  localOf(operation: number): number {
+    return this.#local.get(operation) ?? -1
+  }
+
+  /** Sets the count that subsets start from; undefined: the key's own initial value. */
+  start(initialCount: bigint | undefined): void {
+    if (initialCount === undefined) {
+      this.values = this.#own
+      this.#initial = undefined
+      return
+    }
+    const extended = new WithExtraValue(this.#own, initialCount.toString())
+    this.values = extended
+    this.#initial = extended.extraId
+  }
+
+  isBroken(operations: Iterable<number>): boolean {
+    const sorted = Int32Array.from(operations).sort()
+    const part = gatherOperations(this.key.history, sorted, this.key.keyId, this.key.clockErrorNs)
+    const alone = this.#initial === undefined ? part : { ...part, initial: this.#initial }
+    return decideKey(alone, this.values, this.counting.rule).verdict === 'broken'
+  }
+
+  /** The first increment that does not certainly come before local read `q`, or -1. */
+  incrementNotBefore(q: number): number {
+    const { key } = this
+    for (let i = 0; i < key.n; i++) {
+      if (key.kind[i] === INCREMENT && i !== q && !counts(this.counting, i, 'write', q, 'read'))
+        return key.operation[i]
+    }
+    return -1
+  }
+}
+
+/** Takes away what it can, in halves, quarters and so on, then one by one until nothing goes any more. */
+function shrink(
+  operations: readonly number[],
+  judge: Judge,
+  dependents: Dependents,
+  starting = -1,
+): number[] {
+  let kept = new Set(operations)
+  const attempt = (removed: readonly number[]): boolean => {
+    const rest = new Set(kept)
+    const waiting = removed.filter((i) => i !== starting && rest.delete(i))
+    if (waiting.length === 0) return false
+    for (let i = waiting.pop(); i !== undefined; i = waiting.pop()) {
+      for (const other of dependents(i, rest))
+        if (other !== starting && rest.delete(other)) waiting.push(other)
+    }
+    if (rest.size === 0 || !judge.isBroken(rest)) return false
+    kept = rest
+    return true
+  }
+  for (let size = kept.size >> 1; size > 1; size >>= 1) {
+    const all = [...kept]
+    for (let at = all.length; at > 0; at -= size) attempt(all.slice(Math.max(0, at - size), at))
+  }
+  for (let again = true; again; ) {
+    again = false
+    for (const i of [...kept].reverse()) if (kept.has(i) && attempt([i])) again = true
+  }
+  return [...kept].sort((a, b) => a - b)
+}
+
+/** With a write go its reads and the cas that found it; a torn or refused value goes with any of its sources. */
+function registerDependents(counting: Counting, finding: RawFinding): Dependents {
+  const { key } = counting
+  const versions = findVersions(key)
+  const dependents = new Map<number, number[]>()
+  const add = (write: number, other: number): void => {
+    const others = dependents.get(write)
+    if (others) others.push(other)
+    else dependents.set(write, [other])
+  }
+  for (let p = 0; p < key.n; p++) {
+    const seen = versions.readOf[p]
+    if (seen > 0) add(key.operation[versions.writer[seen]], key.operation[p])
+    const found = versions.writeOf[p] > 0 ? versions.found[versions.writeOf[p]] : -1
+    if (found > 0 && found !== seen) add(key.operation[versions.writer[found]], key.operation[p])
+  }
+  if (finding.kind === 'torn-row' || finding.kind === 'refused-write-seen') {
+    for (const { operation } of finding.exhibits)
+      if (operation !== finding.blamed) add(operation, finding.blamed)
+  }
+  return (removed) => dependents.get(removed) ?? []
+}
+
+/** With an increment go all reads that may include it; the starting read stays. */
+function counterDependents(judge: Judge, starting: number): Dependents {
+  const { key, counting } = judge
+  return function* (removed, among) {
+    const i = judge.localOf(removed)
+    if (key.kind[i] !== INCREMENT) return
+    for (const other of among) {
+      const r = judge.localOf(other)
+      if (other === starting || !isRead(key, r)) continue
+      if (!counts(counting, r, 'read', i, 'write')) yield other
+    }
+  }
+}

@@ -1,0 +1,159 @@
+/**
+ * Where histories come from: files, standard input, text. The only part of reading that touches the system.
+ */
+import { createReadStream } from 'node:fs'
+import { open, stat } from 'node:fs/promises'
+import { Readable } from 'node:stream'
+import { createGunzip } from 'node:zlib'
+import { InputError, type InputProblem } from './problems.js'
+
+/** Bytes that can be read from the start as often as needed. */
+export interface ByteSource {
+  /** as given by the user; `-` for standard input */
+  readonly name: string
+  /** bytes before decompression, where that is known before reading */
+  readonly sizeBytes?: number
+  /** The bytes, decompressed. Throws InputError when they cannot be read. */
+  chunks(): AsyncIterable<Uint8Array>
+}
+
+const CHUNK = 1 << 20
+
+/**
+ * A file, plain or gzip (by its first two bytes). What is no regular file, a pipe say, is kept as it is read, so
+ * that evidence can be fetched from it again. Throws InputError when there is no such file or it is a folder.
+ */
+export async function fileSource(path: string): Promise<ByteSource> {
+  const found = await stat(path).catch((error: NodeJS.ErrnoException) => {
+    throw unreadable(path, error)
+  })
+  if (found.isDirectory()) {
+    throw new InputError([
+      {
+        code: 'not-a-file',
+        file: path,
+        found: 'a folder',
+        expected: 'a file',
+        advice: 'name the files in it',
+      },
+    ])
+  }
+  if (!found.isFile()) return remembered(path, () => createReadStream(path, { highWaterMark: CHUNK }))
+  return { name: path, sizeBytes: found.size, chunks: () => decompressed(path, readFile(path)) }
+}
+
+/** Standard input, or another stream, kept as it is read. */
+export function standardInputSource(stream: Readable = process.stdin): ByteSource {
+  return remembered('-', () => stream)
+}
+
+/** A text or bytes in memory. */
+export function textSource(name: string, text: string | Uint8Array): ByteSource {
+  const bytes = typeof text === 'string' ? new TextEncoder().encode(text) : text
+  return { name, sizeBytes: bytes.length, chunks: () => decompressed(name, Readable.from([bytes])) }
+}
+
+/** Opens the files named on a command line, `-` being standard input. */
+export function openSources(names: readonly string[]): Promise<ByteSource[]> {
+  return Promise.all(names.map((name) => (name === '-' ? standardInputSource() : fileSource(name))))
+}
+
+async function* readFile(path: string): AsyncGenerator<Uint8Array> {
+  const file = await open(path).catch((error: NodeJS.ErrnoException) => {
+    throw unreadable(path, error)
+  })
+  try {
+    for (;;) {
+      const { bytesRead, buffer } = await file.read(Buffer.allocUnsafe(CHUNK), 0, CHUNK).catch((error) => {
+        throw unreadable(path, error)
+      })
+      if (bytesRead === 0) return
+      yield buffer.subarray(0, bytesRead)
+    }
+  } finally {
+    await file.close()
+  }
+}
+
+/** Reads a stream once and answers later reads from memory. */
+function remembered(name: string, open: () => Readable): ByteSource {
+  let kept: Uint8Array[] | undefined
+  async function* raw(): AsyncGenerator<Uint8Array> {
+    if (kept) {
+      yield* kept
+      return
+    }
+    const chunks: Uint8Array[] = []
+    try {
+      for await (const chunk of open()) {
+        chunks.push(chunk)
+        yield chunk
+      }
+    } catch (error) {
+      throw unreadable(name, error as NodeJS.ErrnoException)
+    }
+    kept = chunks
+  }
+  return { name, chunks: () => decompressed(name, raw()) }
+}
+
+/** Unpacks a gzip stream, told by its first two bytes; passes others through. */
+async function* decompressed(name: string, raw: AsyncIterable<Uint8Array>): AsyncGenerator<Uint8Array> {
+  const chunks = raw[Symbol.asyncIterator]()
+  let first = await chunks.next()
+  // The two bytes may come one by one.
+  while (!first.done && first.value.length < 2) {
+    const next = await chunks.next()
+    if (next.done) break
+    first = { done: false, value: Buffer.concat([first.value, next.value]) }
+  }
+  async function* all(): AsyncGenerator<Uint8Array> {
+    if (first.done) return
+    yield first.value
+    for (let next = await chunks.next(); !next.done; next = await chunks.next()) yield next.value
+  }
+  if (first.done || first.value[0] !== 0x1f || first.value[1] !== 0x8b) {
+    yield* all()
+    return
+  }
+  const gunzip = createGunzip({ chunkSize: CHUNK })
+  const input = Readable.from(all())
+  input.on('error', (error) => gunzip.destroy(error))
+  input.pipe(gunzip)
+  try {
+    for await (const chunk of gunzip) yield chunk as Uint8Array
+  } catch (error) {
+    throw isZlibError(error) ? new InputError([gzipProblem(name, error)]) : error
+  } finally {
+    input.destroy()
+  }
+}
+
+function isZlibError(error: unknown): error is NodeJS.ErrnoException {
+  return (
+    error instanceof Error &&
+    /^(Z_|ERR_.*ZLIB|ERR_TRAILING)/.test(String((error as NodeJS.ErrnoException).code))
+  )
+}
+
+function gzipProblem(name: string, error: NodeJS.ErrnoException): InputProblem {
+  const cut = error.code === 'Z_BUF_ERROR'
+  return {
+    code: cut ? 'gzip-cut-short' : 'bad-gzip',
+    file: name,
+    found: cut ? 'a gzip stream that is cut short' : `a damaged gzip stream (${error.message})`,
+    expected: 'a whole gzip stream',
+    advice: 'copy the file again, or unpack what there is of it and check that',
+  }
+}
+
+function unreadable(name: string, error: NodeJS.ErrnoException): InputError {
+  if (error instanceof InputError) return error
+  const found =
+    error.code === 'ENOENT'
+      ? 'no such file'
+      : error.code === 'EACCES'
+        ? 'a file without permission to read it'
+        : error.message
+  return new InputError([{ code: 'unreadable', file: name, found, expected: 'a file that can be read' }])
+}
