@@ -62,6 +62,7 @@ export function findWindows(counting: Counting, counts: Counts): Windows | undef
     if (reads && readsBeforeReads.at(p) > counts.level[p]) return undefined
     if (key.kind[p] !== INCREMENT) continue
     const own = reads ? counts.level[p] - 1 : lowest
+    if (own < lowest) return undefined
     after[p] = Math.max(own, readsBeforeIncrements.at(p), incrementsBefore.at(p))
   }
 

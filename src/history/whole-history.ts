@@ -84,8 +84,12 @@ export function checkCounterValues(
     if (kind[i] === INCREMENT) increments[key[i]] = 1
     else if (kind[i] !== READ) others[key[i]] = 1
   }
-  const spells = (id: number): boolean =>
-    /^"\s*[-+]?[0-9]+(\.[0-9]+)?([eE][-+]?[0-9]+)?\s*"$/.test(values.text(id))
+  // value id → 1 it spells a number, 2 it does not, 0 not looked at yet
+  const known = new Uint8Array(values.size)
+  const spells = (id: number): boolean => {
+    if (known[id] === 0) known[id] = SPELLED_NUMBER.test(values.text(id)) ? 1 : 2
+    return known[id] === 1
+  }
   for (let i = 0; i < count; i++) {
     if (increments[key[i]] === 0 || others[key[i]] === 1 || value[i] === NO_VALUE || !spells(value[i]))
       continue

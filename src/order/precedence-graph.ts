@@ -9,6 +9,7 @@ import { singleSource } from 'graphology-shortest-path/unweighted.js'
 import type { Role } from '../promises/promise.js'
 import { type Counting, counts } from './counting.js'
 import { isRead, isWrite } from './roles.js'
+import { placeOfRead } from './version-orders.js'
 import type { Versions } from './versions.js'
 
 /** Node: one version. Local indices. */
@@ -104,7 +105,7 @@ function someRolesCount(
   const roles = (version: number, p: number): Role[] => {
     const all: Role[] = []
     if (isWrite(key, p) && versions.writeOf[p] === version) all.push('write')
-    if (isRead(key, p) && versions.readOf[p] === version) all.push('read')
+    if (isRead(key, p) && placeOfRead(versions, p) === version) all.push('read')
     return all
   }
   return roles(v, a).some((ra) => roles(w, b).some((rb) => counts(counting, a, ra, b, rb)))

@@ -5,16 +5,55 @@
 import type { Scope } from '../promises/promise.js'
 import type { Counting } from './counting.js'
 
-interface Lists {
-  /** local indices by rising certain end (or start), those of all operations, then those of each host */
-  all: Int32Array
-  byHost: Map<number, Int32Array>
+/** Operations of one clock in the order in which a sweep passes them, and the extreme of those passed. */
+interface Run {
+  readonly members: readonly number[]
+  next: number
+  extreme: number
+}
+
+/** The operations of one clock each: all by certain ends, those of a host, those of a client. */
+class Clocks {
+  readonly all: Run
+  readonly #hosts = new Map<number, Run>()
+  readonly #clients = new Map<number, Run>()
+  readonly #counting: Counting
+
+  constructor(counting: Counting, order: Int32Array, identity: number) {
+    this.#counting = counting
+    const { client, host } = counting.key
+    const add = (runs: Map<number, Run>, clock: number, p: number): void => {
+      const run = runs.get(clock)
+      if (run) (run.members as number[]).push(p)
+      else runs.set(clock, { members: [p], next: 0, extreme: identity })
+    }
+    for (const p of order) {
+      add(this.#hosts, host[p], p)
+      add(this.#clients, client[p], p)
+    }
+    this.all = { members: Array.from(order), next: 0, extreme: identity }
+  }
+
+  host(p: number): Run {
+    return this.#hosts.get(this.#counting.key.host[p])!
+  }
+
+  client(p: number): Run {
+    return this.#clients.get(this.#counting.key.client[p])!
+  }
 }
 
 /** The ends that a scope compares with starts. */
 function endsOf(counting: Counting, scope: Scope): { sure: Float64Array; own: Float64Array } {
   if (scope === 'late') return { sure: counting.delays!.sureEnd, own: counting.delays!.end }
   return { sure: counting.key.sureEnd, own: counting.key.end }
+}
+
+/** Local indices sorted by a time; equal times by index. */
+function sortedBy(time: Float64Array): Int32Array {
+  const order = Int32Array.from(time.keys())
+  // Infinity - Infinity is NaN, so times are compared, not subtracted.
+  return order.sort((a, b) => (time[a] < time[b] ? -1 : time[a] > time[b] ? 1 : a - b))
 }
 
 /**
@@ -27,12 +66,8 @@ export class GreatestBefore {
   readonly #level: Float64Array
   readonly #sure: Float64Array
   readonly #own: Float64Array
-  readonly #lists: Lists
-  #next = 0
-  #greatest = Number.NEGATIVE_INFINITY
-  readonly #hosts = new Map<number, { next: number; greatest: number }>()
-  readonly #clients = new Map<number, number>()
-  #passed = 0
+  readonly #byEnd: Clocks
+  readonly #sessions: Clocks
 
   constructor(counting: Counting, scope: Scope, level: Float64Array) {
     this.#counting = counting
@@ -41,51 +76,35 @@ export class GreatestBefore {
     const { sure, own } = endsOf(counting, scope)
     this.#sure = sure
     this.#own = own
-    this.#lists = sortedLists(counting, (a, b) => own[a] - own[b] || a - b)
+    this.#byEnd = new Clocks(counting, sortedBy(own), Number.NEGATIVE_INFINITY)
+    this.#sessions = new Clocks(counting, Int32Array.from(own.keys()), Number.NEGATIVE_INFINITY)
   }
 
   /** The greatest level before local operation `b`. Ask in rising order of `b`. */
   at(b: number): number {
-    const { key } = this.#counting
     const scope = this.#scope
-    if (scope === 'none' || (scope === 'closing' && this.#counting.closing![b] === 0))
-      return Number.NEGATIVE_INFINITY
-    this.#passClients(b)
-    let greatest = Number.NEGATIVE_INFINITY
-    if (scope !== 'session') {
-      const start = key.start[b]
-      const { all, byHost } = this.#lists
-      while (this.#next < all.length && this.#sure[all[this.#next]] < start) {
-        this.#greatest = this.#max(this.#greatest, all[this.#next++])
-      }
-      greatest = this.#greatest
-      const members = byHost.get(key.host[b])
-      if (members) {
-        const host = this.#hosts.get(key.host[b]) ?? { next: 0, greatest: Number.NEGATIVE_INFINITY }
-        this.#hosts.set(key.host[b], host)
-        while (host.next < members.length && this.#own[members[host.next]] < start) {
-          host.greatest = this.#max(host.greatest, members[host.next++])
-        }
-        if (host.greatest > greatest) greatest = host.greatest
-      }
-    }
-    if (scope !== 'late') {
-      const session = this.#clients.get(key.client[b])
-      if (session !== undefined && session > greatest) greatest = session
-    }
-    return greatest
+    const { key, closing } = this.#counting
+    if (scope === 'none' || (scope === 'closing' && closing![b] === 0)) return Number.NEGATIVE_INFINITY
+    const inSession = (a: number): boolean => a < b
+    if (scope === 'session') return this.#pass(this.#sessions.client(b), inSession)
+    const start = key.start[b]
+    const isOver = (a: number): boolean => this.#own[a] < start
+    return Math.max(
+      this.#pass(this.#byEnd.all, (a) => this.#sure[a] < start),
+      this.#pass(this.#byEnd.host(b), isOver),
+      scope === 'late'
+        ? this.#pass(this.#byEnd.client(b), isOver)
+        : this.#pass(this.#sessions.client(b), inSession),
+    )
   }
 
-  #passClients(b: number): void {
-    const { client } = this.#counting.key
-    for (; this.#passed < b; this.#passed++) {
-      const c = client[this.#passed]
-      this.#clients.set(c, this.#max(this.#clients.get(c) ?? Number.NEGATIVE_INFINITY, this.#passed))
+  #pass(run: Run, isBefore: (a: number) => boolean): number {
+    const { members } = run
+    while (run.next < members.length && isBefore(members[run.next])) {
+      const a = members[run.next++]
+      if (this.#counting.key.acked[a] === 1 && this.#level[a] > run.extreme) run.extreme = this.#level[a]
     }
-  }
-
-  #max(greatest: number, a: number): number {
-    return this.#counting.key.acked[a] === 1 && this.#level[a] > greatest ? this.#level[a] : greatest
+    return run.extreme
   }
 }
 
@@ -94,18 +113,17 @@ export class GreatestBefore {
  * operation until the sweep has passed it; Infinity means that it takes no part.
  */
 export class LeastAfter {
+  /** the order in which to ask: a linear extension of precedence, backward */
+  readonly order: Int32Array
   readonly #counting: Counting
   readonly #scope: Scope
   readonly #level: Float64Array
   readonly #sure: Float64Array
   readonly #own: Float64Array
-  readonly #lists: Lists
-  #next: number
-  #least = Number.POSITIVE_INFINITY
-  readonly #hosts = new Map<number, { next: number; least: number }>()
-  readonly #clients = new Map<number, number>()
-  readonly #order: Int32Array
-  #passed: number
+  readonly #byStart: Clocks
+  readonly #sessions: Clocks
+  /** local index → place in `order` */
+  readonly #placeOf: Int32Array
 
   constructor(counting: Counting, scope: Scope, level: Float64Array) {
     this.#counting = counting
@@ -114,80 +132,41 @@ export class LeastAfter {
     const { sure, own } = endsOf(counting, scope)
     this.#sure = sure
     this.#own = own
-    const { start } = counting.key
-    this.#lists = sortedLists(counting, (a, b) => start[a] - start[b] || a - b)
-    this.#next = this.#lists.all.length - 1
-    this.#order = reverseOrder(counting)
-    this.#passed = 0
-  }
-
-  /** The order in which to ask: a linear extension of precedence, backward. */
-  get order(): Int32Array {
-    return this.#order
+    const { key } = counting
+    this.order = sortedBy(key.end).reverse()
+    this.#placeOf = new Int32Array(key.n)
+    this.order.forEach((p, place) => {
+      this.#placeOf[p] = place
+    })
+    this.#byStart = new Clocks(counting, sortedBy(key.start).reverse(), Number.POSITIVE_INFINITY)
+    this.#sessions = new Clocks(counting, this.order, Number.POSITIVE_INFINITY)
   }
 
   /** The least level after local operation `a`. Ask in the order of `order`. */
   at(a: number): number {
-    const { key } = this.#counting
     const scope = this.#scope
+    const { key } = this.#counting
     if (scope === 'none' || key.acked[a] === 0) return Number.POSITIVE_INFINITY
-    this.#passClients(a)
-    let least = Number.POSITIVE_INFINITY
-    if (scope !== 'session') {
-      const { all, byHost } = this.#lists
-      while (this.#next >= 0 && key.start[all[this.#next]] > this.#sure[a]) {
-        this.#least = this.#min(this.#least, all[this.#next--])
-      }
-      least = this.#least
-      const members = byHost.get(key.host[a])
-      if (members) {
-        const host = this.#hosts.get(key.host[a]) ?? {
-          next: members.length - 1,
-          least: Number.POSITIVE_INFINITY,
-        }
-        this.#hosts.set(key.host[a], host)
-        while (host.next >= 0 && key.start[members[host.next]] > this.#own[a]) {
-          host.least = this.#min(host.least, members[host.next--])
-        }
-        if (host.least < least) least = host.least
-      }
+    const inSession = (b: number): boolean => this.#placeOf[b] < this.#placeOf[a]
+    if (scope === 'session') return this.#pass(this.#sessions.client(a), inSession)
+    const isLater = (b: number): boolean => key.start[b] > this.#own[a]
+    return Math.min(
+      this.#pass(this.#byStart.all, (b) => key.start[b] > this.#sure[a]),
+      this.#pass(this.#byStart.host(a), isLater),
+      scope === 'late'
+        ? this.#pass(this.#byStart.client(a), isLater)
+        : this.#pass(this.#sessions.client(a), inSession),
+    )
+  }
+
+  #pass(run: Run, isAfter: (b: number) => boolean): number {
+    const { members } = run
+    const { closing } = this.#counting
+    while (run.next < members.length && isAfter(members[run.next])) {
+      const b = members[run.next++]
+      if (this.#scope === 'closing' && closing![b] === 0) continue
+      if (this.#level[b] < run.extreme) run.extreme = this.#level[b]
     }
-    if (scope !== 'late') {
-      const session = this.#clients.get(key.client[a])
-      if (session !== undefined && session < least) least = session
-    }
-    return least
+    return run.extreme
   }
-
-  #passClients(a: number): void {
-    const { client } = this.#counting.key
-    while (this.#order[this.#passed] !== a) {
-      const p = this.#order[this.#passed++]
-      this.#clients.set(client[p], this.#min(this.#clients.get(client[p]) ?? Number.POSITIVE_INFINITY, p))
-    }
-  }
-
-  #min(least: number, b: number): number {
-    if (this.#scope === 'closing' && this.#counting.closing![b] === 0) return least
-    return Math.min(this.#level[b], least)
-  }
-}
-
-/** Local indices by falling end: with `i ≺ j`, j comes first. */
-function reverseOrder({ key }: Counting): Int32Array {
-  const order = Int32Array.from({ length: key.n }, (_, p) => p)
-  // Infinity - Infinity is NaN, so ends are compared, not subtracted.
-  return order.sort((a, b) => (key.end[a] > key.end[b] ? -1 : key.end[a] < key.end[b] ? 1 : b - a))
-}
-
-/** All operations, and those of each clock that several operations share (one client's counts as a clock). */
-function sortedLists({ key }: Counting, compare: (a: number, b: number) => number): Lists {
-  const all = Int32Array.from({ length: key.n }, (_, p) => p).sort((a, b) => compare(a, b) || a - b)
-  const members = new Map<number, number[]>()
-  for (const p of all) {
-    const list = members.get(key.host[p])
-    if (list) list.push(p)
-    else members.set(key.host[p], [p])
-  }
-  return { all, byHost: new Map([...members].map(([host, list]) => [host, Int32Array.from(list)])) }
 }

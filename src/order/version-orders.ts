@@ -85,6 +85,14 @@ export function versionOrders(
   return orders
 }
 
+/**
+ * The version at whose place a reading operation stands. An applied cas stands where it wrote, directly after
+ * the version that it found.
+ */
+export function placeOfRead(versions: Versions, p: number): number {
+  return versions.writeOf[p] >= 0 ? versions.writeOf[p] : versions.readOf[p]
+}
+
 interface Clocks {
   /** local indices of each host that several clients share, where the clock error makes a difference */
   hosts: Int32Array[]
@@ -165,7 +173,7 @@ function buildOrder(
       add(versions.writeOf[p], p, acked && (pairs.a & WRITES) !== 0, (pairs.b & WRITES) !== 0)
     if (isRead(key, p)) {
       const isB = (pairs.b & READS) !== 0 && (closing === undefined || closing[p] === 1)
-      add(versions.readOf[p], p, (pairs.a & READS) !== 0, isB)
+      add(placeOfRead(versions, p), p, (pairs.a & READS) !== 0, isB)
     }
   }
   if (!(leastEnd < greatestStart)) return undefined
