@@ -39,6 +39,7 @@ export function findCounts(key: KeyHistory, values: Values): Counts {
   const none = { size: 0n, level, base: 0n, startKnown }
 
   let size: bigint | undefined
+  let severalSizes = false
   let increments = 0
   let lowest: bigint | undefined
   let highest: bigint | undefined
@@ -47,7 +48,7 @@ export function findCounts(key: KeyHistory, values: Values): Counts {
       increments++
       const by = sizeOf(key, values, p)
       if (size === undefined) size = by
-      else if (size !== by) return { ...none, trouble: 'several-sizes' }
+      else if (size !== by) severalSizes = true
     }
     if (!isRead(key, p)) continue
     const count = countOf(values, key.value[p])
@@ -59,6 +60,7 @@ export function findCounts(key: KeyHistory, values: Values): Counts {
   const start = startKnown ? countOf(values, key.initial) : undefined
   if (startKnown && start === undefined) return { ...none, trouble: 'no-number' }
   const base = start ?? (step < 0n ? highest : lowest) ?? 0n
+  if (severalSizes) return { ...none, trouble: 'several-sizes' }
   const found = { size: step, level, base, startKnown }
   for (let p = 0; p < n; p++) {
     if (!isRead(key, p)) continue

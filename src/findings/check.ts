@@ -1,0 +1,377 @@
+/**
+ * Checks a history against promises and tells what it finds: the main job, from columns to result.
+ */
+
+import { decideKey, type KeyKind, kindOfKey } from '../deciders/decide-key.js'
+import type { Decision } from '../deciders/decision.js'
+import {
+  ACKED,
+  CAS,
+  fileOf,
+  type History,
+  INCREMENT,
+  KIND_NAMES,
+  NO_VALUE,
+  OUTCOME_NAMES,
+  WRITE,
+} from '../history/columns.js'
+import { fetchLines, type LinePlace } from '../history/lines.js'
+import type { ByteSource } from '../history/source.js'
+import { countPairs } from '../order/counting.js'
+import { gatherKey, indexByKey, type KeyHistory, type KeyIndex } from '../order/key-history.js'
+import { keyGlob } from '../promises/glob.js'
+import type { PromiseRequest } from '../promises/request.js'
+import { VERSION } from '../version.js'
+import { findCounter } from './counter/find.js'
+import { type Counterexample, findCounterexample } from './counterexample.js'
+import { counterexamplePath, counterexampleText, isBrokenAgain } from './counterexample-text.js'
+import type { RawFinding } from './raw-finding.js'
+import { reasonOf } from './reasons.js'
+import { findRegister } from './register/find.js'
+import type { ChainStep, Finding, FindingOperation, KeyResult, PromiseResult, Result } from './result.js'
+import { type NamedFinding, sortFindings } from './sorting.js'
+import { summarizeHistory } from './summary.js'
+
+export interface CheckRequest {
+  readonly promises: readonly PromiseRequest[]
+  /** replaces what the headers say, in nanoseconds */
+  readonly clockErrorNs?: bigint
+  /** globs; only keys that match one are checked */
+  readonly keys?: readonly string[]
+  /** list all keys in the result, not only those broken or undecided */
+  readonly everyKey?: boolean
+  /** make counterexamples for so many findings, the first in order; default none */
+  readonly counterexamples?: number
+  /** told now and then how many of the keys are decided */
+  onProgress?(done: number, total: number): void
+  /** stops the check: what is not decided by then is undecided, and the result says so */
+  readonly signal?: AbortSignal
+}
+
+/** A counterexample as a file. */
+export interface CounterexampleFile {
+  /** below the output folder, with `/` */
+  readonly path: string
+  /** the history, NDJSON */
+  readonly text: string
+}
+
+export interface Checked {
+  readonly result: Result
+  readonly counterexamples: readonly CounterexampleFile[]
+}
+
+/** How long to decide before other things may happen, in operations. */
+const BREATHE = 200_000
+
+/**
+ * Checks every key under every promise whose glob matches it. `sources` are those that the history was read
+ * from: the records of evidence are fetched from them again. Throws what reading them throws.
+ */
+export async function check(
+  history: History,
+  sources: readonly ByteSource[],
+  request: CheckRequest,
+): Promise<Checked> {
+  const clockErrorNs = request.clockErrorNs ?? history.clockErrorNs
+  const index = indexByKey(history)
+  const run = new Run(history, index, clockErrorNs, request)
+  await run.decideAll()
+  const named = sortFindings(history, run.findings)
+
+  const records = new Records(history, sources)
+  for (const { finding } of named) for (const { operation } of finding.exhibits) records.want(operation)
+  const examples = new Map<NamedFinding, Counterexample>()
+  for (const each of named.slice(0, request.counterexamples ?? 0)) {
+    const rule = request.promises.find(({ name }) => name === each.promise)!.rule
+    const counting = countPairs(gatherKey(history, index, each.finding.keyId, clockErrorNs), rule)
+    const example = findCounterexample(counting, history.values, each.finding)
+    if (!example) continue
+    examples.set(each, example)
+    for (const operation of example.operations) records.want(operation)
+  }
+  await records.fetch()
+
+  const findings: Finding[] = []
+  const counterexamples: CounterexampleFile[] = []
+  for (const each of named) {
+    const id = findings.length + 1
+    const finding = tell(history, records, each, id)
+    const example = examples.get(each)
+    if (example) {
+      const { rule } = request.promises.find(({ name }) => name === each.promise)!
+      const text = counterexampleText(history, records, each.finding.keyId, clockErrorNs, example)
+      if (await isBrokenAgain(text, rule)) {
+        const path = counterexamplePath(id, finding.kind, history.keys.name(each.finding.keyId))
+        counterexamples.push({ path, text })
+        findings.push({ ...finding, counterexample: path })
+        continue
+      }
+    }
+    findings.push(finding)
+  }
+  return { result: run.result(findings), counterexamples }
+}
+
+/** The records of operations, as they stand in the input. */
+export class Records {
+  readonly #history: History
+  readonly #sources: readonly ByteSource[]
+  readonly #wanted = new Map<string, LinePlace>()
+  readonly #texts = new Map<string, string>()
+
+  constructor(history: History, sources: readonly ByteSource[]) {
+    this.#history = history
+    this.#sources = sources
+  }
+
+  want(operation: number): void {
+    for (const place of this.#places(operation)) this.#wanted.set(`${place.file}:${place.line}`, place)
+  }
+
+  async fetch(): Promise<void> {
+    const places = [...this.#wanted.values()]
+    const texts = await fetchLines(this.#sources, places)
+    for (const [i, { file, line }] of places.entries()) this.#texts.set(`${file}:${line}`, texts[i])
+  }
+
+  /** The opening (or only) record, and the closing half where there is one, with their places. */
+  of(operation: number): { place: LinePlace; text: string }[] {
+    return this.#places(operation).map((place) => ({
+      place,
+      text: this.#texts.get(`${place.file}:${place.line}`)!,
+    }))
+  }
+
+  #places(i: number): LinePlace[] {
+    const { line, closeLine, closeFile } = this.#history
+    const file = fileOf(this.#history, i)
+    const places = [{ file, line: line[i] }]
+    if (closeLine && closeLine[i] > 0) {
+      places.push({ file: closeFile && closeFile[i] >= 0 ? closeFile[i] : file, line: closeLine[i] })
+    }
+    return places
+  }
+}
+
+interface Tally {
+  holds: number
+  broken: number
+  undecided: number
+  leftOut: number
+  untested: number
+}
+
+class Run {
+  readonly findings: NamedFinding[] = []
+  readonly #history: History
+  readonly #index: KeyIndex
+  readonly #clockErrorNs: bigint
+  readonly #request: CheckRequest
+  readonly #tallies = new Map<string, Tally>()
+  readonly #keys: KeyResult[] = []
+  readonly #undecided: Result['undecided'] = []
+  #interrupted = false
+
+  constructor(history: History, index: KeyIndex, clockErrorNs: bigint, request: CheckRequest) {
+    this.#history = history
+    this.#index = index
+    this.#clockErrorNs = clockErrorNs
+    this.#request = request
+    for (const { name } of request.promises) {
+      this.#tallies.set(name, { holds: 0, broken: 0, undecided: 0, leftOut: 0, untested: 0 })
+    }
+  }
+
+  async decideAll(): Promise<void> {
+    const { promises, keys, onProgress, signal } = this.#request
+    const isWanted = keys ? keys.map(keyGlob) : undefined
+    const claims = promises.map((promise) => ({ promise, matches: keyGlob(promise.keys) }))
+    const { offset } = this.#index
+    const total = offset.length - 1
+    let since = 0
+    for (let keyId = 0; keyId < total; keyId++) {
+      const name = this.#history.keys.name(keyId)
+      if (offset[keyId] === offset[keyId + 1]) continue
+      if (isWanted && !isWanted.some((matches) => matches(name))) continue
+      const asked = claims.filter(({ matches }) => matches(name)).map(({ promise }) => promise)
+      if (asked.length === 0) continue
+      if (signal?.aborted) this.#interrupted = true
+      this.#decide(keyId, name, asked)
+      since += offset[keyId + 1] - offset[keyId]
+      if (since < BREATHE) continue
+      since = 0
+      onProgress?.(keyId + 1, total)
+      await breathe()
+    }
+  }
+
+  #decide(keyId: number, name: string, asked: readonly PromiseRequest[]): void {
+    const key = gatherKey(this.#history, this.#index, keyId, this.#clockErrorNs)
+    const verdicts: KeyResult['verdicts'] = {}
+    const untested: string[] = []
+    for (const promise of asked) {
+      const decision: Decision = this.#interrupted
+        ? { verdict: 'undecided', reason: 'the check was interrupted before this key' }
+        : decideKey(key, this.#history.values, promise.rule)
+      const tally = this.#tallies.get(promise.name)!
+      if (decision.verdict === 'left-out') {
+        tally.leftOut++
+        continue
+      }
+      verdicts[promise.name] = decision.verdict
+      tally[decision.verdict]++
+      if (decision.verdict === 'holds' && decision.untested) {
+        tally.untested++
+        untested.push(promise.name)
+      }
+      if (decision.verdict === 'undecided') {
+        const { reason, progress } = decision
+        this.#undecided.push({ key: name, promise: promise.name, reason, ...(progress ? { progress } : {}) })
+      }
+      if (decision.verdict === 'broken') {
+        for (const finding of this.#find(key, promise)) this.findings.push({ promise: promise.name, finding })
+      }
+    }
+    if (this.#request.everyKey || Object.values(verdicts).some((verdict) => verdict !== 'holds')) {
+      const operations = this.#index.offset[keyId + 1] - this.#index.offset[keyId]
+      this.#keys.push({
+        key: name,
+        kind: kindOfKey(key),
+        operations,
+        verdicts,
+        ...(untested.length > 0 ? { untested } : {}),
+      })
+    }
+  }
+
+  #find(key: KeyHistory, { rule }: PromiseRequest): RawFinding[] {
+    const counting = countPairs(key, rule)
+    const { offset, operations } = this.#index
+    const kind: KeyKind = kindOfKey(key)
+    if (kind === 'register') {
+      return findRegister(
+        counting,
+        this.#history.values,
+        operations.subarray(offset[key.keyId], offset[key.keyId + 1]),
+      )
+    }
+    return findCounter(counting, this.#history.values)
+  }
+
+  result(findings: Finding[]): Result {
+    const promises = this.#request.promises.map(({ name, rule, parameters, keys }): PromiseResult => {
+      const tally = this.#tallies.get(name)!
+      const verdict =
+        tally.broken > 0 ? 'broken' : tally.undecided > 0 || tally.holds === 0 ? 'undecided' : 'holds'
+      return { name, promise: rule.name, parameters, keys, verdict, ...tally }
+    })
+    const findingCounts: Result['findingCounts'] = {}
+    for (const { kind } of findings) findingCounts[kind] = (findingCounts[kind] ?? 0) + 1
+    const isBroken = promises.some(({ verdict }) => verdict === 'broken')
+    const isUndecided = promises.some(({ verdict }) => verdict === 'undecided')
+    return {
+      result: 1,
+      misread: VERSION,
+      inputs: this.#history.files.map(({ name, bytes }) => ({ file: name, bytes })),
+      history: {
+        ...summarizeHistory(this.#history, this.#index),
+        clockErrorNs: this.#clockErrorNs.toString(),
+        clockErrorFrom:
+          this.#request.clockErrorNs !== undefined
+            ? 'option'
+            : this.#history.clockErrorNs > 0n
+              ? 'headers'
+              : 'default',
+      },
+      ...(this.#request.keys ? { onlyKeys: [...this.#request.keys] } : {}),
+      promises,
+      keys: this.#keys,
+      findings,
+      findingCounts,
+      undecided: this.#undecided,
+      warnings: this.#history.warnings.map((warning) => ({ ...warning })),
+      ...(this.#interrupted ? { interrupted: true as const } : {}),
+      exit: this.#interrupted ? 130 : isBroken ? 1 : isUndecided ? 3 : 0,
+    }
+  }
+}
+
+/** Lets timers, signals and the terminal have their turn. */
+function breathe(): Promise<void> {
+  return new Promise((resolve) => setImmediate(resolve))
+}
+
+/** A finding with its records and reasons. */
+function tell(history: History, records: Records, { promise, finding }: NamedFinding, id: number): Finding {
+  const place = new Map(finding.exhibits.map(({ operation }, at) => [operation, at]))
+  const chain = finding.links
+    .filter(({ before, after }) => (before < 0 || place.has(before)) && place.has(after))
+    .map((link): ChainStep => {
+      const before = place.get(link.before)
+      return {
+        type: link.type,
+        ...(before === undefined ? {} : { before }),
+        after: place.get(link.after)!,
+        why: reasonOf(history, link),
+      }
+    })
+  const { bounds, also } = finding
+  const cause = place.get(finding.cause)
+  return {
+    id,
+    kind: finding.kind,
+    ...(also.length > 0 ? { also: [...also] } : {}),
+    promise,
+    key: history.keys.name(finding.keyId),
+    summary: finding.summary,
+    blamed: place.get(finding.blamed)!,
+    ...(cause === undefined ? {} : { cause }),
+    operations: finding.exhibits.map(({ operation, role }) =>
+      tellOperation(history, records, operation, role),
+    ),
+    ...(chain.length > 0 ? { chain } : {}),
+    ...(bounds
+      ? {
+          bounds: {
+            ...(bounds.from === undefined ? {} : { from: place.get(bounds.from)! }),
+            fromCount: bounds.fromCount.toString(),
+            toCount: bounds.toCount.toString(),
+            least: bounds.least.toString(),
+            most: bounds.most.toString(),
+          },
+        }
+      : {}),
+  }
+}
+
+function tellOperation(history: History, records: Records, i: number, role: string): FindingOperation {
+  const [own, close] = records.of(i)
+  const fileName = (file: number): string => history.files[file].name
+  const kind = history.kind[i]
+  const value = (name: string, id: number): Record<string, string> =>
+    id === NO_VALUE ? {} : { [name]: history.values.text(id) }
+  const isAckedCas = kind === CAS && history.outcome[i] === ACKED
+  return {
+    file: fileName(own.place.file),
+    line: own.place.line,
+    ...(close && close.place.file !== own.place.file ? { closeFile: fileName(close.place.file) } : {}),
+    ...(close ? { closeLine: close.place.line } : {}),
+    role,
+    client: history.clients.name(history.client[i]),
+    ...(history.host[i] >= 0 ? { host: history.hosts.name(history.host[i]) } : {}),
+    key: history.keys.name(history.key[i]),
+    op: KIND_NAMES[kind],
+    outcome: OUTCOME_NAMES[history.outcome[i]],
+    ...value('value', history.value[i]),
+    ...(kind === INCREMENT ? value('by', history.extra[i]) : {}),
+    ...(kind === CAS ? value('expect', history.extra[i]) : {}),
+    ...(kind === WRITE ? value('basis', history.extra[i]) : {}),
+    ...(isAckedCas ? { applied: history.applied[i] === 1 } : {}),
+    ...(isAckedCas && history.saw ? value('saw', history.saw[i]) : {}),
+    startNs: history.times.startNs(i).toString(),
+    ...(history.hasEnd[i] ? { endNs: history.times.endNs(i).toString() } : {}),
+    record: own.text,
+    ...(close ? { closeRecord: close.text } : {}),
+  }
+}

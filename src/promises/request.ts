@@ -1,0 +1,19 @@
+/**
+ * What a user asks to have checked.
+ */
+import type { PairRule } from './promise.js'
+
+export interface PromiseRequest {
+  /** as the result calls it; unique among the requests */
+  readonly name: string
+  readonly rule: PairRule
+  /** as the result shows them */
+  readonly parameters: Readonly<Record<string, string | number>>
+  /** glob of the keys it is claimed for */
+  readonly keys: string
+}
+
+/** The request of a bare promise on all keys. */
+export function requestOf(rule: PairRule): PromiseRequest {
+  return { name: rule.name, rule, parameters: {}, keys: '**' }
+}
