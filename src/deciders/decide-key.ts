@@ -8,7 +8,9 @@ import { isUntested } from '../order/untested.js'
 import type { PairRule } from '../promises/promise.js'
 import { decideCounter } from './counter.js'
 import type { Decision } from './decision.js'
+import { findLostUpdates } from './lost-updates.js'
 import { ambiguityReason, decideRegister } from './register.js'
+import { readsTooFarBehind } from './version-bound.js'
 
 /** register: no increments; counter: increments and reads only; mixed: increments with writes, cas or deletes. */
 export type KeyKind = 'register' | 'counter' | 'mixed'
@@ -21,6 +23,14 @@ export function kindOfKey(key: KeyHistory): KeyKind {
 
 /** Decides whether the promise holds on the key. Never a guess: what no decider settles is `undecided`. */
 export function decideKey(key: KeyHistory, values: Values, rule: PairRule): Decision {
+  const { versions: bound } = rule
+  if (key.hasIncrements && (bound !== undefined || rule.name === 'no-lost-updates')) {
+    return { verdict: 'left-out', reason: 'it means nothing on a key with increments' }
+  }
+  if (rule.name === 'no-lost-updates') {
+    const { lost, updates } = findLostUpdates(key)
+    return lost.length > 0 ? { verdict: 'broken' } : { verdict: 'holds', untested: updates === 0 }
+  }
   const counting = countPairs(key, rule)
   switch (kindOfKey(key)) {
     case 'register': {
@@ -28,6 +38,9 @@ export function decideKey(key: KeyHistory, values: Values, rule: PairRule): Deci
       if (outcome.verdict === 'broken') return { verdict: 'broken' }
       if (outcome.verdict === 'ambiguous') {
         return { verdict: 'undecided', reason: ambiguityReason(counting, outcome.versions) }
+      }
+      if (bound !== undefined && readsTooFarBehind(counting, outcome.versions, bound).length > 0) {
+        return { verdict: 'broken' }
       }
       return { verdict: 'holds', untested: isUntested(counting) }
     }

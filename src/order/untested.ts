@@ -1,9 +1,18 @@
 /**
  * Whether a promise was put to the test on a key at all: a check of nothing must not pass for a check.
  */
-import type { Role } from '../promises/promise.js'
+import type { PairRule, Role } from '../promises/promise.js'
 import { type Counting, counts, scopeOf } from './counting.js'
 import { isRead, isWrite } from './roles.js'
+
+/** What the bound on versions looks at. */
+const ALL_WRITES_BEFORE_READS: PairRule = {
+  name: 'bounded-staleness',
+  counterWriteWrite: 'none',
+  writeRead: 'all',
+  readWrite: 'none',
+  readRead: 'none',
+}
 
 /**
  * True when none of the pairs that the promise adds to write–write bounds a read on this key: no read after a
@@ -12,10 +21,12 @@ import { isRead, isWrite } from './roles.js'
  */
 export function isUntested(counting: Counting): boolean {
   const { rule } = counting
+  if (rule.versions !== undefined && hasPair({ ...counting, rule: ALL_WRITES_BEFORE_READS }, 'write', 'read'))
+    return false
   if (rule.writeRead !== 'none') return !hasPair(counting, 'write', 'read')
   if (rule.readRead !== 'none') return !hasPair(counting, 'read', 'read')
   if (rule.readWrite !== 'none') return !hasPair(counting, 'read', 'write')
-  return !hasRead(counting)
+  return rule.versions !== undefined || !hasRead(counting)
 }
 
 function hasRead({ key }: Counting): boolean {

@@ -7,7 +7,8 @@ import { durable } from './durable.js'
 import { linearizable } from './linearizable.js'
 import { monotonicReads } from './monotonic-reads.js'
 import { monotonicWrites } from './monotonic-writes.js'
-import type { PairRule } from './promise.js'
+import { noLostUpdates } from './no-lost-updates.js'
+import type { PairRule, SingleKeyPromiseName } from './promise.js'
 import { readYourWrites } from './read-your-writes.js'
 import { regular } from './regular.js'
 import { writesFollowReads } from './writes-follow-reads.js'
@@ -21,19 +22,6 @@ export interface Parameters {
 }
 export type ParameterName = keyof Parameters
 
-/** Promises that are decided pair by pair; `no-lost-updates` and the causal ones have deciders of their own. */
-export type PairPromiseName =
-  | 'written-values'
-  | 'read-your-writes'
-  | 'monotonic-reads'
-  | 'monotonic-writes'
-  | 'writes-follow-reads'
-  | 'coherent'
-  | 'bounded-staleness'
-  | 'durable'
-  | 'regular'
-  | 'linearizable'
-
 interface Entry {
   /** parameters that it may have */
   readonly parameters: readonly ParameterName[]
@@ -45,7 +33,7 @@ interface Entry {
 const plain = (rule: PairRule): Entry => ({ parameters: [], needsOne: false, rule: () => rule })
 
 /** One entry a promise: a missing one does not compile. */
-export const PAIR_PROMISES: Record<PairPromiseName, Entry> = {
+export const SINGLE_KEY: Record<SingleKeyPromiseName, Entry> = {
   'written-values': plain(writtenValues),
   'read-your-writes': plain(readYourWrites),
   'monotonic-reads': plain(monotonicReads),
@@ -62,6 +50,7 @@ export const PAIR_PROMISES: Record<PairPromiseName, Entry> = {
       }),
   },
   durable: { parameters: ['settle'], needsOne: false, rule: ({ settle }) => durable(settle) },
+  'no-lost-updates': plain(noLostUpdates),
   regular: plain(regular),
   linearizable: plain(linearizable),
 }

@@ -163,6 +163,7 @@ class Search {
       case 'coherent':
         return inSession
       case 'bounded-staleness':
+        // The bound on versions is looked at when a read is placed.
         return (
           this.#rule.within !== undefined &&
           ra === 'write' &&
