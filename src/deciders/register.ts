@@ -29,13 +29,14 @@ export function decideRegister(counting: Counting, resolved?: Int32Array): Regis
   const blocks = chainBlocks(versions)
   if (blocks.foundTwice.length > 0 || blocks.circular >= 0) return { verdict: 'broken', versions }
 
-  const identity = Int32Array.from({ length: versions.count }, (_, v) => v)
   if (blocks.count < versions.count) {
+    const identity = Int32Array.from({ length: versions.count }, (_, v) => v)
     const orders = versionOrders(counting, versions, identity)
     if (orders.some((order) => chainRunsBackward(order, blocks))) return { verdict: 'broken', versions }
   }
   const orders = versionOrders(counting, versions, blocks.blockOf)
-  orders.push(initialFirst(blocks))
+  // Where nobody read it, nothing can be required before it.
+  if (blocks.count > 1 && versions.isInitialSeen) orders.push(initialFirst(blocks))
   const sorted = sortUnits(blocks.count, orders)
   if (sorted.stuck.length > 0) return { verdict: 'broken', versions }
   return { verdict: 'holds', versions, order: unfold(sorted.order, blocks, versions) }

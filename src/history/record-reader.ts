@@ -39,6 +39,8 @@ import { type Instant, instantNs } from './times.js'
 import { encodeUtf8 } from './utf8.js'
 import { canonicalText, ValueTrouble } from './values.js'
 
+const KIND_BYTES = KIND_NAMES.map((name) => new TextEncoder().encode(name))
+
 /** Where a record stands. */
 export interface Place {
   file: number
@@ -292,9 +294,19 @@ export class RecordReader {
   #kind(): number {
     const { scanner } = this
     if (scanner.type[F.op] === STRING) {
-      const name = scanner.text(F.op)
-      const kind = KIND_NAMES.indexOf(name as (typeof KIND_NAMES)[number])
-      if (kind >= 0) return kind
+      const from = scanner.from[F.op]
+      const length = scanner.to[F.op] - from
+      for (let kind = 0; kind < KIND_BYTES.length; kind++) {
+        const name = KIND_BYTES[kind]
+        if (name.length !== length) continue
+        let i = 0
+        while (i < length && scanner.bytes[from + i] === name[i]) i++
+        if (i === length) return kind
+      }
+      if (scanner.special[F.op]) {
+        const kind = (KIND_NAMES as readonly string[]).indexOf(scanner.text(F.op))
+        if (kind >= 0) return kind
+      }
     }
     throw this.#wrong('op', 'unknown-op', '"read", "write", "increment", "cas" or "delete"')
   }

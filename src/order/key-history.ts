@@ -108,14 +108,17 @@ export function gatherOperations(
   let hasWrites = false
   const kept = new Int32Array(operations.length)
   let n = 0
-  for (const i of operations) {
+  for (let at = 0; at < operations.length; at++) {
+    const i = operations[at]
     const k = kind[i]
     if (k === INCREMENT) hasIncrements = true
     else if (k !== READ) hasWrites = true
-    if (outcome[i] === REFUSED || (k === CAS && applied[i] === 0)) {
-      if (k !== READ && k !== INCREMENT) offered.add(value[i])
+    if (outcome[i] !== ACKED || k === CAS) {
+      if (outcome[i] === REFUSED || (k === CAS && applied[i] === 0)) {
+        if (k !== READ && k !== INCREMENT) offered.add(value[i])
+      }
+      if (outcome[i] === REFUSED || (k === READ && outcome[i] === UNSURE)) continue
     }
-    if (outcome[i] === REFUSED || (k === READ && outcome[i] === UNSURE)) continue
     kept[n++] = i
   }
   const times = gatherTimes(history, kept.subarray(0, n), clockErrorNs)

@@ -6,9 +6,10 @@
  * of clock cover precedence: all operations by their certain ends, one host's by their recorded ends, one
  * client's by their place in its session.
  */
-import type { Role, Scope } from '../promises/promise.js'
+import type { PairRule, Role, Scope } from '../promises/promise.js'
 import { type Counting, scopeOf } from './counting.js'
 import type { IntervalOrder } from './interval-orders.js'
+import type { KeyHistory } from './key-history.js'
 import { isRead, isWrite } from './roles.js'
 import type { Versions } from './versions.js'
 
@@ -103,10 +104,12 @@ interface Clocks {
   place: Float64Array
 }
 
-function clocksOf({ key }: Counting): Clocks {
+function clocksOf({ key, rule }: Counting): Clocks {
   const { n } = key
   let hasClockError = false
   for (let p = 0; p < n && !hasClockError; p++) hasClockError = key.sureEnd[p] !== key.end[p]
+  const needsSessions = hasClockError || countsSessions(rule) || hasTies(key)
+  if (!needsSessions) return { hosts: [], clients: [], everyClient: [], place: key.start }
   const byClient = groupBy(key.client)
   const everyClient = [...byClient.values()].filter((members) => members.length > 1)
   const touches = (members: Int32Array): boolean =>
@@ -119,6 +122,20 @@ function clocksOf({ key }: Counting): Clocks {
     }
   }
   return { hosts, clients, everyClient, place: Float64Array.from({ length: n }, (_, p) => p) }
+}
+
+function countsSessions({ writeRead, readWrite, readRead }: PairRule): boolean {
+  return writeRead === 'session' || readWrite === 'session' || readRead === 'session'
+}
+
+/** Whether some operation starts at the very time at which its client's last one ended. */
+function hasTies({ n, client, start, end }: KeyHistory): boolean {
+  const lastEnd = new Map<number, number>()
+  for (let p = 0; p < n; p++) {
+    if (lastEnd.get(client[p]) === start[p]) return true
+    lastEnd.set(client[p], end[p])
+  }
+  return false
 }
 
 function groupBy(ids: Int32Array): Map<number, Int32Array> {

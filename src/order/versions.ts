@@ -31,6 +31,8 @@ export interface Versions {
   readonly found: Int32Array
   /** value id of the initial version, NO_VALUE while nothing tells */
   readonly initialValue: number
+  /** whether a read returned the initial value or a cas found it */
+  readonly isInitialSeen: boolean
   /** reads that are wrong by themselves, in local order: unwritten, offered only, or before their write */
   readonly wrongReads: readonly number[]
   /** the first reading operation whose version is ambiguous, or -1 */
@@ -101,10 +103,12 @@ export function findVersions(key: KeyHistory, resolved?: Int32Array): Versions {
   const readOf = new Int32Array(n).fill(NO_READ)
   const found = new Int32Array(count).fill(-1)
   const wrongReads: number[] = []
+  let isInitialSeen = false
   for (let p = 0; p < n; p++) {
     const w = saw[p]
     if (w === NOTHING) continue
     const version = w === INITIAL ? 0 : w >= 0 ? writeOf[w] : w
+    if (version === 0) isInitialSeen = true
     if (key.kind[p] === CAS && writeOf[p] >= 0 && version >= 0) found[writeOf[p]] = version
     if (!isRead(key, p)) continue
     readOf[p] = version
@@ -118,6 +122,7 @@ export function findVersions(key: KeyHistory, resolved?: Int32Array): Versions {
     readOf,
     found,
     initialValue,
+    isInitialSeen,
     wrongReads,
     ambiguous,
     impossibleCas,
