@@ -1,0 +1,141 @@
+/**
+ * `misread check FILE...`: decide promises; findings; counterexamples.
+ */
+import { createHash } from 'node:crypto'
+import { createReadStream } from 'node:fs'
+import { join } from 'node:path'
+import { check } from '../findings/check.js'
+import type { Result } from '../findings/result.js'
+import type { History } from '../history/columns.js'
+import { readHistory } from '../history/read.js'
+import { type ByteSource, fileSource, standardInputSource } from '../history/source.js'
+import { keyGlob } from '../promises/glob.js'
+import { didYouMean } from '../promises/nearest.js'
+import { PromiseTrouble, parsePromise } from '../promises/parse-request.js'
+import type { PromiseRequest } from '../promises/request.js'
+import { jsonReport } from '../reports/json.js'
+import { textReport } from '../reports/text.js'
+import { type ExitStatus, UsageError } from './exit.js'
+import { Progress } from './progress.js'
+import { type Terminal, write } from './terminal.js'
+import { prepareFolder, writeWhole } from './write-files.js'
+
+export interface CheckOptions {
+  promise?: string[]
+  clockError?: bigint
+  keys?: string[]
+  format: 'text' | 'json'
+  out?: string
+  force?: boolean
+  everyKey?: boolean
+  limit: number
+}
+
+export async function runCheck(
+  files: readonly string[],
+  options: CheckOptions,
+  terminal: Terminal,
+): Promise<ExitStatus> {
+  const promises = requests(options.promise ?? ['linearizable'])
+  if (options.out !== undefined) await prepareFolder(options.out, options.force ?? false)
+  const sources = await openSources(files, terminal)
+  const progress = new Progress(terminal)
+  const total = totalSize(sources)
+  const history = await readHistory(sources, {
+    onProgress: (bytes) =>
+      progress.show('reading', bytes, total === undefined ? undefined : Math.max(bytes, total)),
+  })
+  if (options.keys) checkGlobs(history, options.keys)
+  const { result, counterexamples } = await check(history, sources, {
+    promises,
+    ...(options.clockError === undefined ? {} : { clockErrorNs: options.clockError }),
+    ...(options.keys ? { keys: options.keys } : {}),
+    everyKey: options.everyKey ?? false,
+    counterexamples: options.out === undefined ? 0 : options.limit,
+    onProgress: (done, all) => progress.show('deciding', done, all),
+    signal: terminal.signal,
+  })
+  progress.clear()
+  if (options.out !== undefined) {
+    const complete = await withDigests(result)
+    for (const { path, text } of counterexamples) await writeWhole(join(options.out, path), text)
+    await writeWhole(join(options.out, 'result.json'), jsonReport(complete))
+    const report = textReport(complete, { width: 100, colour: false, limit: options.limit, out: options.out })
+    await writeWhole(join(options.out, 'report.txt'), report)
+  }
+  const { width, colour } = terminal
+  const shown =
+    options.format === 'json'
+      ? jsonReport(result)
+      : textReport(result, {
+          width,
+          colour,
+          limit: options.limit,
+          ...(options.out === undefined ? {} : { out: options.out }),
+        })
+  await write(terminal.out, shown)
+  return result.exit
+}
+
+/** The promises as typed. Equal names are an error: the result tells them apart by name. */
+function requests(typed: readonly string[]): PromiseRequest[] {
+  const promises: PromiseRequest[] = []
+  for (const text of typed) {
+    try {
+      promises.push(parsePromise(text))
+    } catch (error) {
+      throw error instanceof PromiseTrouble ? new UsageError(`--promise: ${error.message}`) : error
+    }
+  }
+  const names = promises.map(({ name }) => name)
+  const twice = names.find((name, i) => names.indexOf(name) !== i)
+  if (twice !== undefined) throw new UsageError(`--promise: ${JSON.stringify(twice)} is asked for twice`)
+  return promises
+}
+
+/** A glob that no key matches is a mistake: a check of nothing must not pass. */
+function checkGlobs(history: History, globs: readonly string[]): void {
+  for (const glob of globs) {
+    const matches = keyGlob(glob)
+    let any = false
+    for (let k = 0; k < history.keys.size && !any; k++) any = matches(history.keys.name(k))
+    if (any) continue
+    const names = Array.from({ length: Math.min(history.keys.size, 10_000) }, (_, k) => history.keys.name(k))
+    throw new UsageError(`--keys: no key matches ${JSON.stringify(glob)}${didYouMean(glob, names)}`)
+  }
+}
+
+/** The sources of the files on the command line, `-` being standard input. */
+export function openSources(files: readonly string[], terminal: Terminal): Promise<ByteSource[]> {
+  const twice = files.find((file, i) => files.indexOf(file) !== i)
+  if (twice !== undefined) throw new UsageError(`${twice} is named twice`)
+  return Promise.all(
+    files.map((file) =>
+      file === '-' ? standardInputSource(terminal.input as NodeJS.ReadStream) : fileSource(file),
+    ),
+  )
+}
+
+export function totalSize(sources: readonly ByteSource[]): number | undefined {
+  let total = 0
+  for (const { sizeBytes } of sources) {
+    if (sizeBytes === undefined) return undefined
+    total += sizeBytes
+  }
+  return total
+}
+
+/** Adds the SHA-256 of each input file. */
+async function withDigests(result: Result): Promise<Result> {
+  const inputs = []
+  for (const input of result.inputs) {
+    if (input.file === '-') {
+      inputs.push(input)
+      continue
+    }
+    const hash = createHash('sha256')
+    for await (const chunk of createReadStream(input.file)) hash.update(chunk)
+    inputs.push({ ...input, sha256: hash.digest('hex') })
+  }
+  return { ...result, inputs }
+}

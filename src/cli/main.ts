@@ -1,0 +1,101 @@
+#!/usr/bin/env node
+/**
+ * The command line. What a command does is loaded when it is asked for, so that `--help` is quick.
+ */
+import { realpathSync } from 'node:fs'
+import { fileURLToPath } from 'node:url'
+import { Command, CommanderError } from 'commander'
+import { VERSION } from '../version.js'
+import { type ExitStatus, endOf } from './exit.js'
+import { collect, countOption, durationOption, oneOf } from './options.js'
+import { processTerminal, type Terminal, write } from './terminal.js'
+
+/** The program with all its commands; `end` is told the status of the one that ran. */
+export function buildProgram(terminal: Terminal, end: (status: ExitStatus) => void): Command {
+  const program = new Command('misread')
+    .description('Checks recorded client histories of a store against what the store promised.')
+    .version(VERSION)
+    .showHelpAfterError('(misread --help lists the commands)')
+    .addHelpText('after', '\nExample:\n  misread check histories/harbour.ndjson\n')
+    .exitOverride()
+    .configureOutput({
+      writeOut: (text) => terminal.out.write(text),
+      writeErr: (text) => terminal.err.write(text),
+      getOutHelpWidth: () => terminal.width,
+      getErrHelpWidth: () => terminal.width,
+    })
+
+  program
+    .command('check')
+    .description('decide promises and show what breaks them')
+    .argument('<file...>', 'histories: .ndjson, .ndjson.gz, or - for standard input')
+    .option(
+      '--promise <name>',
+      'promise to check, with its parameters (repeatable; default linearizable)',
+      collect,
+    )
+    .option(
+      '--clock-error <duration>',
+      'how far clocks may be off, whatever the headers say (2ms)',
+      durationOption,
+    )
+    .option('--keys <glob>', 'only keys that match (repeatable)', collect)
+    .option('--format <format>', 'text or json', oneOf('text', 'json'), 'text')
+    .option('--out <dir>', 'write result, report and counterexamples to a folder')
+    .option('--force', 'let --out write into a folder that is not empty')
+    .option('--every-key', 'list every key in the result, not only those broken or undecided')
+    .option('--limit <n>', 'findings in the text, and counterexample files', countOption, 20)
+    .addHelpText(
+      'after',
+      '\nExample:\n  misread check histories/harbour.ndjson --keys "berth/*" --out findings\n',
+    )
+    .action(async (files: string[], options) => {
+      const { runCheck } = await import('./check.js')
+      end(await runCheck(files, options, terminal))
+    })
+
+  program
+    .command('survey')
+    .description('what is in these files')
+    .argument('<file...>', 'histories: .ndjson, .ndjson.gz, or - for standard input')
+    .option('--format <format>', 'text or json', oneOf('text', 'json'), 'text')
+    .addHelpText('after', '\nExample:\n  misread survey histories/harbour.ndjson\n')
+    .action(async (files: string[], options) => {
+      const { runSurvey } = await import('./survey.js')
+      end(await runSurvey(files, options, terminal))
+    })
+  return program
+}
+
+/** Runs a command line and answers the exit status. Never throws. */
+export async function run(args: readonly string[], terminal: Terminal): Promise<ExitStatus> {
+  let status: ExitStatus = 0
+  const program = buildProgram(terminal, (ended) => {
+    status = ended
+  })
+  try {
+    if (args.length === 0) program.help()
+    await program.parseAsync(args, { from: 'user' })
+    return status
+  } catch (error) {
+    if (error instanceof CommanderError) return error.exitCode === 0 ? 0 : 2
+    const { status: failed, message } = endOf(error)
+    await write(terminal.err, `${message}\n`)
+    return failed
+  }
+}
+
+if (process.argv[1] && realpathSync(process.argv[1]) === fileURLToPath(import.meta.url)) {
+  const controller = new AbortController()
+  // The first interrupt stops the check and prints what was found; the second ends at once.
+  process.once('SIGINT', () => {
+    controller.abort()
+    process.once('SIGINT', () => process.exit(130))
+  })
+  // A reader that has had enough closes the pipe: end quietly.
+  process.stdout.on('error', (error: NodeJS.ErrnoException) => {
+    if (error.code === 'EPIPE') process.exit()
+    throw error
+  })
+  process.exitCode = await run(process.argv.slice(2), processTerminal(controller.signal))
+}

@@ -1,2 +1,0 @@
-/** The version of misread that results carry; a test holds it to package.json. */
-export const VERSION = '0.1.0'
