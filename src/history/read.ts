@@ -1,7 +1,7 @@
 /**
  * Reads a history: all files, line by line, into columns (format.md).
  */
-import type { History } from './columns.js'
+import type { History, Mark } from './columns.js'
 import { visitLines } from './lines.js'
 import { InputError, type InputProblem, PROBLEM_LIMIT } from './problems.js'
 import { type Place, RecordReader } from './record-reader.js'
@@ -144,6 +144,7 @@ async function readFile(
 }
 
 function finish({ builder, headers }: RecordReader): History {
+  joinMarks(builder.marks)
   const initial = new Map<number, number>()
   if (headers.initial.size > 0) {
     for (let key = 0; key < builder.keys.size; key++) {
@@ -157,6 +158,14 @@ function finish({ builder, headers }: RecordReader): History {
     initial,
     initialUnknown: headers.initialUnknown ?? false,
   })
+}
+
+/** A recorder writes a mark when it begins and once more, with its end, when it is over: the first one goes. */
+function joinMarks(marks: Mark[]): void {
+  const name = ({ text, startNs }: Mark): string => `${startNs} ${text}`
+  const spans = new Set(marks.filter(({ startNs, endNs }) => endNs > startNs).map(name))
+  const kept = marks.filter((mark) => mark.endNs > mark.startNs || !spans.has(name(mark)))
+  marks.splice(0, marks.length, ...kept)
 }
 
 /** Collects problems, keeps the first by place. */
