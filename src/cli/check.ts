@@ -14,6 +14,7 @@ import { didYouMean } from '../promises/nearest.js'
 import { PromiseTrouble, parsePromise } from '../promises/parse-request.js'
 import type { PromiseRequest } from '../promises/request.js'
 import { jsonReport } from '../reports/json.js'
+import { ndjsonReport } from '../reports/ndjson.js'
 import { textReport } from '../reports/text.js'
 import { type ExitStatus, UsageError } from './exit.js'
 import { Progress } from './progress.js'
@@ -24,7 +25,7 @@ export interface CheckOptions {
   promise?: string[]
   clockError?: bigint
   keys?: string[]
-  format: 'text' | 'json'
+  format: 'text' | 'json' | 'ndjson'
   out?: string
   force?: boolean
   everyKey?: boolean
@@ -64,15 +65,13 @@ export async function runCheck(
     await writeWhole(join(options.out, 'report.txt'), report)
   }
   const { width, colour } = terminal
+  const { out, limit, format } = options
   const shown =
-    options.format === 'json'
+    format === 'json'
       ? jsonReport(result)
-      : textReport(result, {
-          width,
-          colour,
-          limit: options.limit,
-          ...(options.out === undefined ? {} : { out: options.out }),
-        })
+      : format === 'ndjson'
+        ? await ndjsonReport(result)
+        : textReport(result, { width, colour, limit, ...(out === undefined ? {} : { out }) })
   await write(terminal.out, shown)
   return result.exit
 }

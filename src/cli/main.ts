@@ -1,14 +1,11 @@
-#!/usr/bin/env node
 /**
  * The command line. What a command does is loaded when it is asked for, so that `--help` is quick.
  */
-import { realpathSync } from 'node:fs'
-import { fileURLToPath } from 'node:url'
 import { Command, CommanderError } from 'commander'
 import { VERSION } from '../version.js'
 import { type ExitStatus, endOf } from './exit.js'
 import { collect, countOption, durationOption, oneOf } from './options.js'
-import { processTerminal, type Terminal, write } from './terminal.js'
+import { type Terminal, write } from './terminal.js'
 
 /** The program with all its commands; `end` is told the status of the one that ran. */
 export function buildProgram(terminal: Terminal, end: (status: ExitStatus) => void): Command {
@@ -40,7 +37,12 @@ export function buildProgram(terminal: Terminal, end: (status: ExitStatus) => vo
       durationOption,
     )
     .option('--keys <glob>', 'only keys that match (repeatable)', collect)
-    .option('--format <format>', 'text or json', oneOf('text', 'json'), 'text')
+    .option(
+      '--format <format>',
+      'text, json, or ndjson (findings alone, one a line)',
+      oneOf('text', 'json', 'ndjson'),
+      'text',
+    )
     .option('--out <dir>', 'write result, report and counterexamples to a folder')
     .option('--force', 'let --out write into a folder that is not empty')
     .option('--every-key', 'list every key in the result, not only those broken or undecided')
@@ -83,19 +85,4 @@ export async function run(args: readonly string[], terminal: Terminal): Promise<
     await write(terminal.err, `${message}\n`)
     return failed
   }
-}
-
-if (process.argv[1] && realpathSync(process.argv[1]) === fileURLToPath(import.meta.url)) {
-  const controller = new AbortController()
-  // The first interrupt stops the check and prints what was found; the second ends at once.
-  process.once('SIGINT', () => {
-    controller.abort()
-    process.once('SIGINT', () => process.exit(130))
-  })
-  // A reader that has had enough closes the pipe: end quietly.
-  process.stdout.on('error', (error: NodeJS.ErrnoException) => {
-    if (error.code === 'EPIPE') process.exit()
-    throw error
-  })
-  process.exitCode = await run(process.argv.slice(2), processTerminal(controller.signal))
 }

@@ -177,16 +177,11 @@ export const resultSchema = z.object({
   exit: z.union([z.literal(0), z.literal(1), z.literal(3), z.literal(130)]),
 })
 
-export type Verdict = z.infer<typeof verdictSchema>
-export type InputResult = z.infer<typeof inputSchema>
 export type HistoryFacts = z.infer<typeof historySchema>
 export type PromiseResult = z.infer<typeof promiseResultSchema>
 export type KeyResult = z.infer<typeof keyResultSchema>
 export type FindingOperation = z.infer<typeof findingOperationSchema>
 export type ChainStep = z.infer<typeof chainStepSchema>
 export type Bounds = z.infer<typeof boundsSchema>
-export type FindingMark = z.infer<typeof findingMarkSchema>
 export type Finding = z.infer<typeof findingSchema>
-export type UndecidedResult = z.infer<typeof undecidedSchema>
-export type WarningResult = z.infer<typeof warningSchema>
 export type Result = z.infer<typeof resultSchema>

@@ -15,14 +15,12 @@ export const INCREMENT = 2
 export const CAS = 3
 export const DELETE = 4
 export const KIND_NAMES = ['read', 'write', 'increment', 'cas', 'delete'] as const
-export type KindName = (typeof KIND_NAMES)[number]
 
 /** Outcomes, as stored in `History.outcome`. */
 export const ACKED = 0
 export const REFUSED = 1
 export const UNSURE = 2
 export const OUTCOME_NAMES = ['acked', 'refused', 'unsure'] as const
-export type OutcomeName = (typeof OUTCOME_NAMES)[number]
 
 /** In a value column: the record carries no such value. */
 export const NO_VALUE = -1

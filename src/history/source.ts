@@ -53,11 +53,6 @@ export function textSource(name: string, text: string | Uint8Array): ByteSource 
   return { name, sizeBytes: bytes.length, chunks: () => decompressed(name, Readable.from([bytes])) }
 }
 
-/** Opens the files named on a command line, `-` being standard input. */
-export function openSources(names: readonly string[]): Promise<ByteSource[]> {
-  return Promise.all(names.map((name) => (name === '-' ? standardInputSource() : fileSource(name))))
-}
-
 async function* readFile(path: string): AsyncGenerator<Uint8Array> {
   const file = await open(path).catch((error: NodeJS.ErrnoException) => {
     throw unreadable(path, error)

@@ -85,7 +85,7 @@ async function main(): Promise<void> {
     for (let round = 0; round < ROUNDS; round++) {
       const parse = measure(loop, [file])
       if (Number(parse.output) !== operations) throw new Error(`the loop saw ${parse.output} operations`)
-      const check = measure(join(root, 'dist/cli/main.js'), ['check', file, '--format', 'json'])
+      const check = measure(join(root, 'dist/cli/bin.js'), ['check', file, '--format', 'json'])
       const result = JSON.parse(check.output)
       if (result.history.operations !== operations || result.exit !== 0)
         throw new Error('a sound history must hold')

@@ -1,0 +1,14 @@
+import { describe, expect, it } from 'vitest'
+import { historyPublication } from './history-publication.js'
+import { published, schemaText } from './publish.js'
+import { resultPublication } from './result-publication.js'
+import { surveyPublication } from './survey-publication.js'
+
+describe('the published JSON Schemas', () => {
+  it.each([historyPublication, resultPublication, surveyPublication])(
+    '$file is what the code defines',
+    (publication) => {
+      expect(published(publication), 'run npm run schemas').toBe(schemaText(publication))
+    },
+  )
+})
