@@ -95,24 +95,30 @@ function remembered(name: string, open: () => Readable): ByteSource {
 /** Unpacks a gzip stream, told by its first two bytes; passes others through. */
 async function* decompressed(name: string, raw: AsyncIterable<Uint8Array>): AsyncGenerator<Uint8Array> {
   const chunks = raw[Symbol.asyncIterator]()
-  let first = await chunks.next()
-  // The two bytes may come one by one.
-  while (!first.done && first.value.length < 2) {
-    const next = await chunks.next()
-    if (next.done) break
-    first = { done: false, value: Buffer.concat([first.value, next.value]) }
+  try {
+    const first: Uint8Array[] = []
+    // The two bytes may come one by one.
+    while (first.reduce((sum, { length }) => sum + length, 0) < 2) {
+      const next = await chunks.next()
+      if (next.done) break
+      first.push(next.value)
+    }
+    async function* all(): AsyncGenerator<Uint8Array> {
+      yield* first
+      for (let next = await chunks.next(); !next.done; next = await chunks.next()) yield next.value
+    }
+    const [one, two] = Buffer.concat(first.map((chunk) => chunk.subarray(0, 2)))
+    if (one === 0x1f && two === 0x8b) yield* gunzipped(name, all())
+    else yield* all()
+  } finally {
+    // Whoever stops early must not leave the file open.
+    await chunks.return?.()
   }
-  async function* all(): AsyncGenerator<Uint8Array> {
-    if (first.done) return
-    yield first.value
-    for (let next = await chunks.next(); !next.done; next = await chunks.next()) yield next.value
-  }
-  if (first.done || first.value[0] !== 0x1f || first.value[1] !== 0x8b) {
-    yield* all()
-    return
-  }
+}
+
+async function* gunzipped(name: string, packed: AsyncIterable<Uint8Array>): AsyncGenerator<Uint8Array> {
   const gunzip = createGunzip({ chunkSize: CHUNK })
-  const input = Readable.from(all())
+  const input = Readable.from(packed)
   input.on('error', (error) => gunzip.destroy(error))
   input.pipe(gunzip)
   try {

@@ -5,19 +5,7 @@
 
 import { once } from 'node:events'
 import { createWriteStream } from 'node:fs'
-
-/** xorshift32: small, seeded, the same everywhere. */
-function generator(seed: number): () => number {
-  let state = seed >>> 0 || 1
-  return () => {
-    state ^= state << 13
-    state >>>= 0
-    state ^= state >>> 17
-    state ^= state << 5
-    state >>>= 0
-    return state / 4294967296
-  }
-}
+import { seededRandom } from '../oracles/random.js'
 
 export interface Shape {
   readonly operations: number
@@ -31,7 +19,7 @@ export async function makeHistory(
   path: string,
   { operations, keys, clients = 64, seed = 1 }: Shape,
 ): Promise<number> {
-  const random = generator(seed)
+  const random = seededRandom(seed)
   const out = createWriteStream(path, { highWaterMark: 1 << 20 })
   const base = 1719830000000000000n
   // Nanoseconds after the base, exact in a double; each client's clock.
