@@ -20,45 +20,83 @@ export async function visitLines(
   visitor: LineVisitor,
   onBytes?: (n: number) => void,
 ): Promise<void> {
-  let carry = new Uint8Array(0)
-  let line = 1
-  let skipping = false
-  let first = true
+  const cutter = new LineCutter(visitor)
   for await (const chunk of source.chunks()) {
     onBytes?.(chunk.length)
-    let bytes: Uint8Array = chunk
-    if (carry.length > 0) {
-      bytes = new Uint8Array(carry.length + chunk.length)
-      bytes.set(carry)
-      bytes.set(chunk, carry.length)
-    }
+    if (!cutter.add(chunk)) return
+  }
+  cutter.end()
+}
+
+/** Cuts chunks into lines; only a line that spans chunks is copied. */
+class LineCutter {
+  readonly #visitor: LineVisitor
+  /** the beginning of a line whose end has not come */
+  #carry: Uint8Array[] = []
+  #carried = 0
+  #line = 1
+  /** inside a line that is too long */
+  #skipping = false
+
+  constructor(visitor: LineVisitor) {
+    this.#visitor = visitor
+  }
+
+  /** False: the visitor has had enough. */
+  add(chunk: Uint8Array): boolean {
     let from = 0
-    if (first && bytes.length >= 3) {
-      if (bytes[0] === 0xef && bytes[1] === 0xbb && bytes[2] === 0xbf) from = 3
-      first = false
-    } else if (first) {
-      carry = bytes.slice()
-      continue
-    }
-    for (let end = bytes.indexOf(0x0a, from); end >= 0; end = bytes.indexOf(0x0a, from)) {
-      if (skipping) {
-        skipping = false
-      } else if (end - from > LINE_LIMIT) {
-        if (!visitor.tooLong(line)) return
-      } else if (!visitor.line(bytes, from, withoutReturn(bytes, from, end), line, true)) return
-      line++
+    for (let end = chunk.indexOf(0x0a); end >= 0; end = chunk.indexOf(0x0a, from)) {
+      if (!this.#finish(chunk, from, end, true)) return false
+      this.#line++
       from = end + 1
     }
-    if (skipping) carry = new Uint8Array(0)
-    else if (bytes.length - from > LINE_LIMIT) {
-      skipping = true
-      carry = new Uint8Array(0)
-      if (!visitor.tooLong(line)) return
-    } else carry = bytes.slice(from)
+    const rest = chunk.length - from
+    if (this.#skipping || rest === 0) return true
+    if (this.#carried + rest > LINE_LIMIT) {
+      this.#skipping = true
+      this.#carry = []
+      this.#carried = 0
+      return this.#visitor.tooLong(this.#line)
+    }
+    // A copy: a Buffer's own slice would be a view of bytes that are overwritten.
+    this.#carry.push(new Uint8Array(chunk.subarray(from)))
+    this.#carried += rest
+    return true
   }
-  if (carry.length === 0) return
-  const from = first && carry.length >= 3 && carry[0] === 0xef ? 3 : 0
-  visitor.line(carry, from, withoutReturn(carry, from, carry.length), line, false)
+
+  end(): void {
+    if (this.#carried > 0) this.#finish(new Uint8Array(0), 0, 0, false)
+  }
+
+  #finish(chunk: Uint8Array, from: number, end: number, terminated: boolean): boolean {
+    if (this.#skipping) {
+      this.#skipping = false
+      return true
+    }
+    if (this.#carried + end - from > LINE_LIMIT) {
+      this.#carry = []
+      this.#carried = 0
+      return this.#visitor.tooLong(this.#line)
+    }
+    if (this.#carried === 0) return this.#visit(chunk, from, end, terminated)
+    const whole = new Uint8Array(this.#carried + end - from)
+    let at = 0
+    for (const part of this.#carry) {
+      whole.set(part, at)
+      at += part.length
+    }
+    whole.set(chunk.subarray(from, end), at)
+    this.#carry = []
+    this.#carried = 0
+    return this.#visit(whole, 0, whole.length, terminated)
+  }
+
+  #visit(bytes: Uint8Array, from: number, end: number, terminated: boolean): boolean {
+    const isMarked =
+      this.#line === 1 && bytes[from] === 0xef && bytes[from + 1] === 0xbb && bytes[from + 2] === 0xbf
+    const start = isMarked && end - from >= 3 ? from + 3 : from
+    return this.#visitor.line(bytes, start, withoutReturn(bytes, start, end), this.#line, terminated)
+  }
 }
 
 function withoutReturn(bytes: Uint8Array, from: number, to: number): number {

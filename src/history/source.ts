@@ -1,8 +1,8 @@
 /**
  * Where histories come from: files, standard input, text. The only part of reading that touches the system.
  */
-import { createReadStream } from 'node:fs'
-import { open, stat } from 'node:fs/promises'
+import { closeSync, createReadStream, openSync, readSync } from 'node:fs'
+import { stat } from 'node:fs/promises'
 import { Readable } from 'node:stream'
 import { createGunzip } from 'node:zlib'
 import { InputError, type InputProblem } from './problems.js'
@@ -13,11 +13,16 @@ export interface ByteSource {
   readonly name: string
   /** bytes before decompression, where that is known before reading */
   readonly sizeBytes?: number
-  /** The bytes, decompressed. Throws InputError when they cannot be read. */
+  /**
+   * The bytes, decompressed. A chunk may be overwritten once the next is asked for. Throws InputError when they
+   * cannot be read.
+   */
   chunks(): AsyncIterable<Uint8Array>
 }
 
 const CHUNK = 1 << 20
+/** Chunks between two turns for others. */
+const BREATHE = 16
 
 /**
  * A file, plain or gzip (by its first two bytes). What is no regular file, a pipe say, is kept as it is read, so
@@ -53,20 +58,31 @@ export function textSource(name: string, text: string | Uint8Array): ByteSource 
   return { name, sizeBytes: bytes.length, chunks: () => decompressed(name, Readable.from([bytes])) }
 }
 
+/**
+ * The bytes of a regular file, in one buffer used again and again: a chunk is good until the next is asked for.
+ * Read synchronously, which is many times quicker than a trip to the thread pool a chunk; now and then others
+ * have their turn.
+ */
 async function* readFile(path: string): AsyncGenerator<Uint8Array> {
-  const file = await open(path).catch((error: NodeJS.ErrnoException) => {
-    throw unreadable(path, error)
-  })
+  const file = attempt(path, () => openSync(path, 'r'))
+  const buffer = Buffer.allocUnsafeSlow(CHUNK)
   try {
-    for (;;) {
-      const { bytesRead, buffer } = await file.read(Buffer.allocUnsafe(CHUNK), 0, CHUNK).catch((error) => {
-        throw unreadable(path, error)
-      })
-      if (bytesRead === 0) return
-      yield buffer.subarray(0, bytesRead)
+    for (let chunk = 1; ; chunk++) {
+      const bytes = attempt(path, () => readSync(file, buffer, 0, CHUNK, null))
+      if (bytes === 0) return
+      yield buffer.subarray(0, bytes)
+      if (chunk % BREATHE === 0) await new Promise((resolve) => setImmediate(resolve))
     }
   } finally {
-    await file.close()
+    closeSync(file)
+  }
+}
+
+function attempt<T>(path: string, action: () => T): T {
+  try {
+    return action()
+  } catch (error) {
+    throw unreadable(path, error as NodeJS.ErrnoException)
   }
 }
 
@@ -101,7 +117,8 @@ async function* decompressed(name: string, raw: AsyncIterable<Uint8Array>): Asyn
     while (first.reduce((sum, { length }) => sum + length, 0) < 2) {
       const next = await chunks.next()
       if (next.done) break
-      first.push(next.value)
+      // Kept only while the next one is asked for, if this one was a single byte.
+      first.push(next.value.length < 2 ? new Uint8Array(next.value) : next.value)
     }
     async function* all(): AsyncGenerator<Uint8Array> {
       yield* first
@@ -118,7 +135,8 @@ async function* decompressed(name: string, raw: AsyncIterable<Uint8Array>): Asyn
 
 async function* gunzipped(name: string, packed: AsyncIterable<Uint8Array>): AsyncGenerator<Uint8Array> {
   const gunzip = createGunzip({ chunkSize: CHUNK })
-  const input = Readable.from(packed)
+  // The stream queues chunks, so each needs bytes of its own.
+  const input = Readable.from(copies(packed))
   input.on('error', (error) => gunzip.destroy(error))
   input.pipe(gunzip)
   try {
@@ -128,6 +146,10 @@ async function* gunzipped(name: string, packed: AsyncIterable<Uint8Array>): Asyn
   } finally {
     input.destroy()
   }
+}
+
+async function* copies(chunks: AsyncIterable<Uint8Array>): AsyncGenerator<Uint8Array> {
+  for await (const chunk of chunks) yield Buffer.from(chunk)
 }
 
 function isZlibError(error: unknown): error is NodeJS.ErrnoException {
