@@ -13,8 +13,6 @@ import { AMBIGUOUS, findVersions, type Versions } from '../order/versions.js'
 export interface RegisterOutcome {
   readonly verdict: 'holds' | 'broken' | 'ambiguous'
   readonly versions: Versions
-  /** when it holds: the versions in an order that proves it, the initial one first */
-  readonly order?: Int32Array
 }
 
 /**
@@ -39,7 +37,7 @@ export function decideRegister(counting: Counting, resolved?: Int32Array): Regis
   if (blocks.count > 1 && versions.isInitialSeen) orders.push(initialFirst(blocks))
   const sorted = sortUnits(blocks.count, orders)
   if (sorted.stuck.length > 0) return { verdict: 'broken', versions }
-  return { verdict: 'holds', versions, order: unfold(sorted.order, blocks, versions) }
+  return { verdict: 'holds', versions }
 }
 
 /** The initial value precedes everything: its block must go before all others. */
@@ -72,15 +70,6 @@ function chainRunsBackward(order: IntervalOrder, blocks: Blocks): boolean {
     if (maxStart[e] > latestStart) latestStart = maxStart[e]
   }
   return false
-}
-
-/** Blocks in order → versions in order. */
-function unfold(order: Int32Array, blocks: Blocks, versions: Versions): Int32Array {
-  const rank = new Int32Array(blocks.count)
-  for (let r = 0; r < order.length; r++) rank[order[r]] = r
-  return Int32Array.from({ length: versions.count }, (_, v) => v).sort(
-    (a, b) => rank[blocks.blockOf[a]] - rank[blocks.blockOf[b]] || blocks.placeOf[a] - blocks.placeOf[b],
-  )
 }
 
 /** Why an ambiguous key is one, in plain words. */

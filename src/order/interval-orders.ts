@@ -8,6 +8,8 @@
  * O(entries · log entries).
  */
 
+import { sortedPositions } from './sorting.js'
+
 /** One clock's view. Entry arrays are parallel; a unit has at most one entry in an order. */
 export interface IntervalOrder {
   /** true where the numbers are places in a session, not times */
@@ -97,8 +99,8 @@ class Clock {
     const m = order.unit.length
     this.entryOf = new Int32Array(units).fill(-1)
     for (let e = 0; e < m; e++) this.entryOf[order.unit[e]] = e
-    this.#byEnd = sortedBy(order.minEnd)
-    this.#byStart = sortedBy(order.maxStart)
+    this.#byEnd = sortedPositions(order.minEnd)
+    this.#byStart = sortedPositions(order.maxStart)
     this.#isFree = new Uint8Array(m)
   }
 
@@ -128,11 +130,4 @@ class Clock {
       this.#nextStart++
     }
   }
-}
-
-/** Positions in rising order of their number. */
-function sortedBy(values: Float64Array): Int32Array {
-  const order = new Int32Array(values.length)
-  for (let i = 0; i < order.length; i++) order[i] = i
-  return order.sort((a, b) => values[a] - values[b] || a - b)
 }

@@ -4,6 +4,7 @@
  */
 import type { Scope } from '../promises/promise.js'
 import type { Counting } from './counting.js'
+import { sortedPositions } from './sorting.js'
 
 /** Operations of one clock in the order in which a sweep passes them, and the extreme of those passed. */
 interface Run {
@@ -49,13 +50,6 @@ function endsOf(counting: Counting, scope: Scope): { sure: Float64Array; own: Fl
   return { sure: counting.key.sureEnd, own: counting.key.end }
 }
 
-/** Local indices sorted by a time; equal times by index. */
-function sortedBy(time: Float64Array): Int32Array {
-  const order = Int32Array.from(time.keys())
-  // Infinity - Infinity is NaN, so times are compared, not subtracted.
-  return order.sort((a, b) => (time[a] < time[b] ? -1 : time[a] > time[b] ? 1 : a - b))
-}
-
 /**
  * The greatest `level` among the acked operations that count as before an operation. `level` may still change
  * for an operation until the sweep has passed it; -Infinity means that it takes no part.
@@ -76,7 +70,7 @@ export class GreatestBefore {
     const { sure, own } = endsOf(counting, scope)
     this.#sure = sure
     this.#own = own
-    this.#byEnd = new Clocks(counting, sortedBy(own), Number.NEGATIVE_INFINITY)
+    this.#byEnd = new Clocks(counting, sortedPositions(own), Number.NEGATIVE_INFINITY)
     this.#sessions = new Clocks(counting, Int32Array.from(own.keys()), Number.NEGATIVE_INFINITY)
   }
 
@@ -133,12 +127,12 @@ export class LeastAfter {
     this.#sure = sure
     this.#own = own
     const { key } = counting
-    this.order = sortedBy(key.end).reverse()
+    this.order = sortedPositions(key.end).reverse()
     this.#placeOf = new Int32Array(key.n)
     this.order.forEach((p, place) => {
       this.#placeOf[p] = place
     })
-    this.#byStart = new Clocks(counting, sortedBy(key.start).reverse(), Number.POSITIVE_INFINITY)
+    this.#byStart = new Clocks(counting, sortedPositions(key.start).reverse(), Number.POSITIVE_INFINITY)
     this.#sessions = new Clocks(counting, this.order, Number.POSITIVE_INFINITY)
   }
 

@@ -10,7 +10,7 @@ import type { PairRule, Role, Scope } from '../promises/promise.js'
 import { type Counting, scopeOf } from './counting.js'
 import type { IntervalOrder } from './interval-orders.js'
 import type { KeyHistory } from './key-history.js'
-import { isRead, isWrite } from './roles.js'
+import { isRead } from './roles.js'
 import type { Versions } from './versions.js'
 
 const READS = 1
@@ -158,46 +158,68 @@ function buildOrder(
   { end, start, inSession }: { end: Float64Array; start: Float64Array; inSession: boolean },
   closing: Uint8Array | undefined,
 ): IntervalOrder | undefined {
-  const entryOf = new Map<number, number>()
-  const unit: number[] = []
-  const minEnd: number[] = []
-  const maxStart: number[] = []
-  let leastEnd = Number.POSITIVE_INFINITY
-  let greatestStart = Number.NEGATIVE_INFINITY
-  const add = (version: number, p: number, isA: boolean, isB: boolean): void => {
-    if (version < 0 || !(isA || isB)) return
-    const u = unitOf[version]
-    let e = entryOf.get(u)
-    if (e === undefined) {
-      e = unit.length
-      entryOf.set(u, e)
-      unit.push(u)
-      minEnd.push(Number.POSITIVE_INFINITY)
-      maxStart.push(Number.NEGATIVE_INFINITY)
+  const entries = new Entries(Math.min(2 * members.length, unitOf.length))
+  const { writeOf } = versions
+  for (let m = 0; m < members.length; m++) {
+    const p = members[m]
+    if (writeOf[p] >= 0) {
+      const e = entries.of(unitOf[writeOf[p]])
+      if ((pairs.a & WRITES) !== 0 && key.acked[p] === 1) entries.addEnd(e, end[p])
+      if ((pairs.b & WRITES) !== 0) entries.addStart(e, start[p])
     }
-    if (isA && end[p] < minEnd[e]) {
-      minEnd[e] = end[p]
-      if (end[p] < leastEnd) leastEnd = end[p]
-    }
-    if (isB && start[p] > maxStart[e]) {
-      maxStart[e] = start[p]
-      if (start[p] > greatestStart) greatestStart = start[p]
-    }
+    if (!isRead(key, p)) continue
+    const place = placeOfRead(versions, p)
+    if (place < 0) continue
+    const e = entries.of(unitOf[place])
+    if ((pairs.a & READS) !== 0) entries.addEnd(e, end[p])
+    if ((pairs.b & READS) !== 0 && (closing === undefined || closing[p] === 1)) entries.addStart(e, start[p])
   }
-  for (const p of members) {
-    const acked = key.acked[p] === 1
-    if (isWrite(key, p))
-      add(versions.writeOf[p], p, acked && (pairs.a & WRITES) !== 0, (pairs.b & WRITES) !== 0)
-    if (isRead(key, p)) {
-      const isB = (pairs.b & READS) !== 0 && (closing === undefined || closing[p] === 1)
-      add(placeOfRead(versions, p), p, (pairs.a & READS) !== 0, isB)
-    }
+  return entries.leastEnd < entries.greatestStart ? entries.toOrder(inSession) : undefined
+}
+
+/** Grows the entries of an order: a unit's is made when it is first met. */
+class Entries {
+  leastEnd = Number.POSITIVE_INFINITY
+  greatestStart = Number.NEGATIVE_INFINITY
+  #count = 0
+  readonly #entryOf = new Map<number, number>()
+  readonly #unit: Int32Array
+  readonly #minEnd: Float64Array
+  readonly #maxStart: Float64Array
+
+  constructor(most: number) {
+    this.#unit = new Int32Array(most)
+    this.#minEnd = new Float64Array(most)
+    this.#maxStart = new Float64Array(most)
   }
-  if (!(leastEnd < greatestStart)) return undefined
-  return {
-    inSession,
-    unit: Int32Array.from(unit),
-    minEnd: Float64Array.from(minEnd),
-    maxStart: Float64Array.from(maxStart),
+
+  of(unit: number): number {
+    const known = this.#entryOf.get(unit)
+    if (known !== undefined) return known
+    const e = this.#count++
+    this.#entryOf.set(unit, e)
+    this.#unit[e] = unit
+    this.#minEnd[e] = Number.POSITIVE_INFINITY
+    this.#maxStart[e] = Number.NEGATIVE_INFINITY
+    return e
+  }
+
+  addEnd(e: number, end: number): void {
+    if (end < this.#minEnd[e]) this.#minEnd[e] = end
+    if (end < this.leastEnd) this.leastEnd = end
+  }
+
+  addStart(e: number, start: number): void {
+    if (start > this.#maxStart[e]) this.#maxStart[e] = start
+    if (start > this.greatestStart) this.greatestStart = start
+  }
+
+  toOrder(inSession: boolean): IntervalOrder {
+    return {
+      inSession,
+      unit: this.#unit.subarray(0, this.#count),
+      minEnd: this.#minEnd.subarray(0, this.#count),
+      maxStart: this.#maxStart.subarray(0, this.#count),
+    }
   }
 }

@@ -11,6 +11,7 @@ import type { Counting } from '../../order/counting.js'
 import { counts } from '../../order/counting.js'
 import type { IntervalOrder } from '../../order/interval-orders.js'
 import { isRead } from '../../order/roles.js'
+import { sortedPositions } from '../../order/sorting.js'
 import { versionOrders } from '../../order/version-orders.js'
 import type { Versions } from '../../order/versions.js'
 import type { Link } from '../raw-finding.js'
@@ -209,10 +210,7 @@ class SearchOrder {
     this.#order = order
     this.#entryOf = new Int32Array(versions).fill(-1)
     for (let e = 0; e < order.unit.length; e++) this.#entryOf[order.unit[e]] = e
-    const { maxStart } = order
-    this.#byStart = Int32Array.from(maxStart.keys()).sort((a, b) =>
-      maxStart[a] < maxStart[b] ? -1 : maxStart[a] > maxStart[b] ? 1 : a - b,
-    )
+    this.#byStart = sortedPositions(order.maxStart)
   }
 
   leastEndOf(version: number): number {
