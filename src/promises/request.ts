@@ -12,8 +12,3 @@ export interface PromiseRequest {
   /** glob of the keys it is claimed for */
   readonly keys: string
 }
-
-/** The request of a bare promise on all keys. */
-export function requestOf(rule: PairRule): PromiseRequest {
-  return { name: rule.name, rule, parameters: {}, keys: '**' }
-}

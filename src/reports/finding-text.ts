@@ -29,7 +29,7 @@ function tellParagraph(page: Page, findings: Paragraph, outFolder: string | unde
   const [finding] = findings
   const { bold, red, dim } = page.colours
   const where = finding.key === undefined ? (finding.keys ?? []).join(', ') : finding.key
-  page.line(`${red(bold(`[${finding.id}] ${finding.kind}`))}  ${bold(cut(where, NAME_LENGTH))}`)
+  page.prose(cut(where, NAME_LENGTH), `${red(bold(`[${finding.id}] ${finding.kind}`))}  `, bold)
   page.prose(cut(finding.summary, SUMMARY_LENGTH), '  ')
   page.prose(breaks(findings), '  ', dim)
   page.blank()
@@ -42,13 +42,14 @@ function tellParagraph(page: Page, findings: Paragraph, outFolder: string | unde
     const when = afterNs === undefined ? relation : `${duration(BigInt(afterNs))} ${relation}`
     page.prose(`The blamed operation came ${when} "${cut(mark, NAME_LENGTH)}".`, '  ')
   }
-  if (finding.counterexample === undefined) return
-  page.prose(
-    outFolder === undefined
-      ? 'Counterexample: a history of its own, written with --out DIR.'
-      : `Counterexample: ${printable(`${outFolder.replace(/\/$/, '')}/${finding.counterexample}`)}`,
-    '  ',
-  )
+  if (outFolder === undefined) {
+    page.prose('Counterexample: --out DIR writes it, a history of its own that is broken alone.', '  ', dim)
+  } else if (finding.counterexample !== undefined) {
+    page.prose(
+      `Counterexample: ${printable(`${outFolder.replace(/\/$/, '')}/${finding.counterexample}`)}`,
+      '  ',
+    )
+  }
 }
 
 /** "Breaks linearizable and regular. Also fits own-write-missed." */
