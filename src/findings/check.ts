@@ -25,6 +25,7 @@ import { VERSION } from '../version.js'
 import { findCounter } from './counter/find.js'
 import { type Counterexample, findCounterexample } from './counterexample.js'
 import { counterexamplePath, counterexampleText, isBrokenAgain } from './counterexample-text.js'
+import { findLostUpdateFindings } from './lost-updates.js'
 import type { RawFinding } from './raw-finding.js'
 import { reasonOf } from './reasons.js'
 import { findRegister } from './register/find.js'
@@ -248,6 +249,7 @@ class Run {
   #find(key: KeyHistory, { rule }: PromiseRequest): RawFinding[] {
     const counting = countPairs(key, rule)
     const { offset, operations } = this.#index
+    if (rule.name === 'no-lost-updates') return findLostUpdateFindings(counting)
     const kind: KeyKind = kindOfKey(key)
     if (kind === 'register') {
       return findRegister(

@@ -105,3 +105,35 @@ describe('the plain cases', () => {
     expect(operations.map((line) => JSON.parse(line).op)).toEqual(['read', 'increment', 'read'])
   })
 })
+
+describe('under every promise', () => {
+  it.each([
+    'written-values',
+    'read-your-writes',
+    'monotonic-reads',
+    'writes-follow-reads',
+    'coherent',
+    'bounded-staleness within=2ns',
+    'bounded-staleness versions=0',
+    'durable',
+    'no-lost-updates',
+    'regular',
+  ])('a key broken under %s has a finding with a counterexample', async (promise) => {
+    let broken = 0
+    await fc.assert(
+      fc.asyncProperty(
+        fc.constantFrom<Family>('register', 'cas', 'counter').chain((family) => tinyKey(family, 8)),
+        async (key) => {
+          const text = keyText(key)
+          const { result, counterexamples } = await checkText(text, promise)
+          if (result.exit !== 1) return
+          broken++
+          expect(result.findings.length, text).toBeGreaterThan(0)
+          expect(counterexamples.length, text).toBe(result.findings.length)
+        },
+      ),
+      { numRuns: runs(300) },
+    )
+    expect(broken).toBeGreaterThan(10)
+  })
+})

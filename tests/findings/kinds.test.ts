@@ -58,4 +58,17 @@ describe('findings are called what a person would say was seen', () => {
       'own-write-missed',
     ])
   })
+
+  it.each([
+    ['A w1 | A w2 | A w3 | C r1', 'bounded-staleness versions=1', ['stale-read']],
+    ['A w1 | A w2 | A w3 | C r2', 'bounded-staleness versions=1', []],
+    ['A w1 | A w2 | C w3 | C r1', 'bounded-staleness versions=1', ['own-write-missed']],
+    ['A w1 | B c1>2 & C c1>3', 'no-lost-updates', ['lost-update']],
+    ['A w1 | A w2 | C r1 | D r1', 'durable', ['lost-write']],
+    ['A w1 | A w2 | C r1 | D r1', 'coherent', []],
+    ['A w1 | C r1 | A w2 | C r2 | C r1', 'monotonic-reads', ['backward-read']],
+    ['A w1 | C r1 | A w2 | C r2 | C r1', 'read-your-writes', []],
+  ])('%s under %s', async (story, promise, kinds) => {
+    expect((await findingsOf(story, promise)).map(({ kind }) => kind)).toEqual(kinds)
+  })
 })

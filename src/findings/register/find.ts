@@ -26,6 +26,7 @@ import {
   revertedSentence,
   valueReturned,
 } from './sentences.js'
+import { findTooFarBehind } from './too-far-behind.js'
 import { wrongReadFinding } from './wrong-reads.js'
 
 /** Promises under which a loss or a reversal is told (findings.md). */
@@ -44,6 +45,7 @@ export function findRegister(counting: Counting, values: Values, operations: Int
     search.revertedValues()
   }
   search.blamedReads()
+  search.tooFarBehind()
   if (search.found.length === 0)
     search.found.push(orderConflict(search.newer, suspectVersions(counting, search.versions)))
   return search.found
@@ -245,6 +247,17 @@ class Search {
         ...toOperations(this.newer, evidence),
         summary: readSentence(kind, this.#tell, story),
       })
+    }
+  }
+
+  tooFarBehind(): void {
+    const bound = this.counting.rule.versions
+    if (bound === undefined) return
+    const { operation } = this.counting.key
+    const told = new Set([...this.#told].map((p) => operation[p]))
+    for (const finding of this.found) told.add(finding.blamed)
+    for (const finding of findTooFarBehind(this.counting, this.versions, bound)) {
+      if (!told.has(finding.blamed)) this.found.push(finding)
     }
   }
 
