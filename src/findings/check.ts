@@ -17,7 +17,7 @@ import {
 } from '../history/columns.js'
 import { fetchLines, type LinePlace } from '../history/lines.js'
 import type { ByteSource } from '../history/source.js'
-import { countPairs } from '../order/counting.js'
+import { type Counting, countPairs } from '../order/counting.js'
 import { gatherKey, indexByKey, type KeyHistory, type KeyIndex } from '../order/key-history.js'
 import { keyGlob } from '../promises/glob.js'
 import type { PromiseRequest } from '../promises/request.js'
@@ -26,12 +26,15 @@ import { findCounter } from './counter/find.js'
 import { type Counterexample, findCounterexample } from './counterexample.js'
 import { counterexamplePath, counterexampleText, isBrokenAgain } from './counterexample-text.js'
 import { findLostUpdateFindings } from './lost-updates.js'
+import { findingMargin, greater, keyMargin, type Margin } from './margin.js'
+import { marksOf } from './marks.js'
 import type { RawFinding } from './raw-finding.js'
 import { reasonOf } from './reasons.js'
 import { findRegister } from './register/find.js'
 import type { ChainStep, Finding, FindingOperation, KeyResult, PromiseResult, Result } from './result.js'
 import { type NamedFinding, sortFindings } from './sorting.js'
 import { summarizeHistory } from './summary.js'
+import { upheld } from './upholds.js'
 
 export interface CheckRequest {
   readonly promises: readonly PromiseRequest[]
@@ -211,6 +214,7 @@ class Run {
     const key = gatherKey(this.#history, this.#index, keyId, this.#clockErrorNs)
     const verdicts: KeyResult['verdicts'] = {}
     const untested: string[] = []
+    const margins: Record<string, string> = {}
     for (const promise of asked) {
       const decision: Decision = this.#interrupted
         ? { verdict: 'undecided', reason: 'the check was interrupted before this key' }
@@ -231,7 +235,15 @@ class Run {
         this.#undecided.push({ key: name, promise: promise.name, reason, ...(progress ? { progress } : {}) })
       }
       if (decision.verdict === 'broken') {
-        for (const finding of this.#find(key, promise)) this.findings.push({ promise: promise.name, finding })
+        const found = this.#find(key, promise)
+        const margin = this.#margin(key, promise, found)
+        margins[promise.name] = margin.toString()
+        for (const finding of found) {
+          this.findings.push({
+            promise: promise.name,
+            finding: { ...finding, margin: finding.margin ?? margin },
+          })
+        }
       }
     }
     if (this.#request.everyKey || Object.values(verdicts).some((verdict) => verdict !== 'holds')) {
@@ -242,12 +254,32 @@ class Run {
         operations,
         verdicts,
         ...(untested.length > 0 ? { untested } : {}),
+        ...(Object.keys(margins).length > 0
+          ? { marginNs: margins, upholds: upheld(key, this.#history.values) }
+          : {}),
       })
     }
   }
 
+  /** The key's margin under a promise, from those of its findings. */
+  #margin(key: KeyHistory, { rule }: PromiseRequest, found: readonly RawFinding[]): Margin {
+    const best = found.reduce<Margin>(
+      (margin, finding) => greater(margin, finding.margin ?? key.clockErrorNs),
+      key.clockErrorNs,
+    )
+    return keyMargin(this.#history, this.#index, key.keyId, rule, key.clockErrorNs, best)
+  }
+
   #find(key: KeyHistory, { rule }: PromiseRequest): RawFinding[] {
     const counting = countPairs(key, rule)
+    return this.#findOn(counting).map((finding) => {
+      const margin = findingMargin(counting, this.#index, finding)
+      return margin === undefined ? finding : { ...finding, margin }
+    })
+  }
+
+  #findOn(counting: Counting): RawFinding[] {
+    const { key, rule } = counting
     const { offset, operations } = this.#index
     if (rule.name === 'no-lost-updates') return findLostUpdateFindings(counting)
     const kind: KeyKind = kindOfKey(key)
@@ -319,6 +351,11 @@ function tell(history: History, records: Records, { promise, finding }: NamedFin
       }
     })
   const { bounds, also } = finding
+  const marks = marksOf(history, finding.blamed).map(({ mark, relation, afterNs }) => ({
+    mark,
+    relation,
+    ...(afterNs === undefined ? {} : { afterNs: afterNs.toString() }),
+  }))
   const cause = place.get(finding.cause)
   return {
     id,
@@ -344,6 +381,8 @@ function tell(history: History, records: Records, { promise, finding }: NamedFin
           },
         }
       : {}),
+    ...(finding.margin === undefined ? {} : { marginNs: finding.margin.toString() }),
+    ...(marks.length > 0 ? { marks } : {}),
   }
 }
 

@@ -12,6 +12,7 @@ import { type Counting, counts } from '../order/counting.js'
 import { sizeOf } from '../order/counts.js'
 import type { KeyHistory } from '../order/key-history.js'
 import { gatherOperations } from '../order/key-history.js'
+import { precedes } from '../order/precedence.js'
 import { isRead } from '../order/roles.js'
 import { findVersions } from '../order/versions.js'
 import type { RawFinding } from './raw-finding.js'
@@ -182,14 +183,14 @@ function registerDependents(counting: Counting, finding: RawFinding): Dependents
 
 /** With an increment go all reads that may include it; the starting read stays. */
 function counterDependents(judge: Judge, starting: number): Dependents {
-  const { key, counting } = judge
+  const { key } = judge
   return function* (removed, among) {
     const i = judge.localOf(removed)
     if (key.kind[i] !== INCREMENT) return
     for (const other of among) {
       const r = judge.localOf(other)
       if (other === starting || !isRead(key, r)) continue
-      if (!counts(counting, r, 'read', i, 'write')) yield other
+      if (!precedes(key, r, i)) yield other
     }
   }
 }

@@ -2,6 +2,7 @@
  * A finding before records are fetched: its evidence in operation indices of the history.
  */
 import type { FindingKind } from './kinds.js'
+import type { Margin } from './margin.js'
 
 /** One operation of the evidence. */
 export interface Exhibit {
@@ -49,4 +50,6 @@ export interface RawFinding {
   readonly links: readonly Link[]
   readonly bounds?: CounterBounds
   readonly summary: string
+  /** set once it has been worked out */
+  readonly margin?: Margin
 }

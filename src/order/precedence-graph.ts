@@ -26,6 +26,8 @@ export interface MustPrecede {
   readonly after: number
   /** how much clock error it survives, in the key's own time; Infinity when no clock explains it */
   readonly slack: number
+  /** chains of cas that carry the link over to these versions: each stands directly after the version it found */
+  readonly chained?: readonly { readonly before: number; readonly after: number }[]
 }
 
 export type PrecedenceGraph = DirectedGraph<VersionNode, MustPrecede>
@@ -51,7 +53,35 @@ export function precedenceGraph(
       if (edge) graph.addEdge(v, w, edge)
     }
   }
+  carryOver(graph, versions)
   return graph
+}
+
+/**
+ * A version written by a cas stands directly after the one it found: what must come before it must come before
+ * that one too, and what that one must precede comes after it. Adds these edges until there are no more.
+ */
+function carryOver(graph: PrecedenceGraph, versions: Versions): void {
+  const chained = graph
+    .nodes()
+    .map(Number)
+    .filter((w) => versions.found[w] >= 0 && graph.hasNode(versions.found[w]))
+  for (let again = true; again; ) {
+    again = false
+    for (const w of chained) {
+      const v = versions.found[w]
+      const link = { before: versions.writer[v], after: versions.writer[w] }
+      const carry = (from: number, to: number, known: MustPrecede): void => {
+        if (from === to || graph.hasEdge(from, to)) return
+        graph.addEdge(from, to, { ...known, chained: [...(known.chained ?? []), link] })
+        again = true
+      }
+      for (const x of graph.inNeighbors(w).map(Number))
+        if (x !== v) carry(x, v, graph.getEdgeAttributes(x, w))
+      for (const x of graph.outNeighbors(v).map(Number))
+        if (x !== w) carry(w, x, graph.getEdgeAttributes(v, x))
+    }
+  }
 }
 
 function bestEdge(

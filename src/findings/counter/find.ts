@@ -138,9 +138,9 @@ function boundsFinding(
     links.push({ type: 'pair', before: key.operation[before], after: key.operation[after] })
   }
   for (const i of between) {
-    if (kind !== 'lost-increment' || i === r) continue
+    if (kind !== 'lost-increment') continue
     if (q !== START) pair(q, i)
-    pair(i, r)
+    if (i !== r) pair(i, r)
   }
   if (kind === 'backward-counter') pair(q, r)
   return {
@@ -177,7 +177,8 @@ function incrementsOf(tallies: Tallies, kind: FindingKind, q: number, r: number)
     return tallies.size(a) > tallies.size(b) ? -1 : tallies.size(a) < tallies.size(b) ? 1 : a - b
   })
   for (const i of bySize) {
-    if (sum > needed) break
+    // At least one: it is what puts the one read before the other.
+    if (chosen.length > 0 && sum > needed) break
     chosen.push(i)
     sum += tallies.size(i)
   }

@@ -5,6 +5,7 @@ import { INCREMENT, type Values } from '../../history/columns.js'
 import { type Counting, counts } from '../../order/counting.js'
 import { countOf, sizeOf } from '../../order/counts.js'
 import type { KeyHistory } from '../../order/key-history.js'
+import { precedes } from '../../order/precedence.js'
 import { isRead } from '../../order/roles.js'
 
 /** Stands for the start of the history where a read is asked for. */
@@ -50,7 +51,8 @@ export class Tallies {
   /** Whether increment `i` certainly lies between: q ≺ i ≺ r, where r's own increment counts as before r. */
   surelyBetween(q: number, i: number, r: number): boolean {
     if (this.key.acked[i] === 0 || i === q) return false
-    const afterStart = q === START || counts(this.counting, q, 'read', i, 'write')
+    // Nobody reads the future: a read comes before the increments that it precedes under every promise.
+    const afterStart = q === START || precedes(this.key, q, i)
     if (i === r) return afterStart
     return afterStart && counts(this.counting, i, 'write', r, 'read')
   }
@@ -59,7 +61,7 @@ export class Tallies {
   maybeBetween(q: number, i: number, r: number): boolean {
     if (i === q) return false
     if (i === r) return true
-    if (counts(this.counting, r, 'read', i, 'write')) return false
+    if (precedes(this.key, r, i)) return false
     return q === START || !counts(this.counting, i, 'write', q, 'read')
   }
 

@@ -16,8 +16,8 @@ export interface Proof {
   readonly newer: number
   /** w(W), or a sound read of W */
   readonly via: number
-  /** an operation of V and then `via` were seen in turn: W is newer than V for this read only */
-  readonly observed: boolean
+  /** a read of W that an operation of V precedes and that precedes the blamed read: W is newer for that one only */
+  readonly observedBy: number | undefined
 }
 
 export interface Blame {
@@ -94,9 +94,10 @@ class Weigher {
     if (slack === undefined) {
       const { counting } = this.#newer
       slack = this.#newer.pairSlack(proof.via, this.#read)
-      if (proof.observed) {
-        const first = observer(this.#newer, this.#version, proof.via)
-        slack = Math.min(slack, first < 0 ? slack : this.#newer.pairSlack(first, proof.via))
+      if (proof.observedBy !== undefined) {
+        const q = proof.observedBy
+        const first = observer(this.#newer, this.#version, q)
+        slack = Math.min(slack, this.#newer.pairSlack(first, q), this.#newer.pairSlack(q, this.#read))
       } else {
         for (const link of this.#newer.path(this.#version, proof.newer)) {
           if (link.type === 'pair') slack = Math.min(slack, this.#newer.pairSlack(link.before, link.after))
@@ -117,7 +118,7 @@ function weighWrites(newer: Newer, version: number, read: number, weigh: Weigher
   for (const w of newer.reach(version).from.keys()) {
     const write = versions.writer[w]
     if (key.start[write] >= key.start[read] || !counts(counting, write, 'write', read, 'read')) continue
-    weigh.add({ newer: w, via: write, observed: false }, true)
+    weigh.add({ newer: w, via: write, observedBy: undefined }, true)
     if (++weighed >= WEIGHED) return
   }
 }
@@ -138,12 +139,12 @@ function weighOwnOperations(
     const p = session[i]
     const written = versions.writeOf[p]
     if (written > 0 && from.has(written) && counts(counting, p, 'write', read, 'read')) {
-      weigh.add({ newer: written, via: p, observed: false }, true)
+      weigh.add({ newer: written, via: p, observedBy: undefined }, true)
       weighed++
     }
     const seen = versions.readOf[p]
     if (seen > 0 && sound[p] && from.has(seen) && counts(counting, p, 'read', read, 'read')) {
-      weigh.add({ newer: seen, via: p, observed: false }, false)
+      weigh.add({ newer: seen, via: p, observedBy: undefined }, false)
       weighed++
     }
   }
@@ -159,7 +160,7 @@ function weighReads(newer: Newer, version: number, read: number, weigh: Weigher)
     const w = versions.readOf[q]
     if (w < 0 || w === version || !sound[q] || !counts(counting, q, 'read', read, 'read')) continue
     if (from.has(w)) {
-      weigh.add({ newer: w, via: q, observed: false }, false)
+      weigh.add({ newer: w, via: q, observedBy: undefined }, false)
       weighed++
       continue
     }
@@ -170,11 +171,11 @@ function weighReads(newer: Newer, version: number, read: number, weigh: Weigher)
       unordered.set(w, isUnordered)
     }
     if (!isUnordered) continue
-    weigh.add({ newer: w, via: q, observed: true }, false)
+    weigh.add({ newer: w, via: q, observedBy: q }, false)
     weighed++
     const write = versions.writer[w]
     if (counts(counting, write, 'write', read, 'read'))
-      weigh.add({ newer: w, via: write, observed: true }, true)
+      weigh.add({ newer: w, via: write, observedBy: q }, true)
   }
 }
 

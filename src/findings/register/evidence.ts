@@ -16,10 +16,10 @@ export function readEvidence(newer: Newer, version: number, read: number, proof:
   const { versions } = newer
   const write = versions.writer[proof.newer]
   const links: Link[] = []
-  if (proof.observed) {
-    const first = observer(newer, version, proof.via)
-    const q = proof.via === write ? -1 : proof.via
-    if (first >= 0 && q >= 0) links.push({ type: 'pair', before: first, after: q })
+  if (proof.observedBy !== undefined) {
+    const q = proof.observedBy
+    links.push({ type: 'pair', before: observer(newer, version, q), after: q })
+    if (proof.via !== q) links.push({ type: 'pair', before: q, after: read })
   } else {
     links.push(...newer.path(version, proof.newer))
   }

@@ -162,7 +162,7 @@ class Search {
         for (const kind of this.#fitting(read)) also.add(kind)
         this.#told.add(read)
       }
-      const proof: Proof = { newer: lost.version, via: write, observed: false }
+      const proof: Proof = { newer: lost.version, via: write, observedBy: undefined }
       const evidence = readEvidence(newer, versions.readOf[lost.closing], lost.closing, proof)
       for (const exhibit of evidence.exhibits) {
         if (exhibit.p === write) exhibit.role = 'the lost write'

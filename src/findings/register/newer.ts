@@ -43,8 +43,6 @@ export function membersOf(counting: Counting, versions: Versions): Members {
 export interface Reach {
   /** newer version → the version that the search came from */
   readonly from: ReadonlyMap<number, number>
-  /** true when the search stopped at its limit */
-  readonly cut: boolean
 }
 
 export class Newer {
@@ -58,7 +56,7 @@ export class Newer {
   readonly #orders: SearchOrder[]
   /** version → versions whose cas found it */
   readonly #foundBy: Map<number, number[]>
-  readonly #reaches = new Map<number, { limit: number; reach: Reach }>()
+  readonly #reaches = new Map<number, Reach>()
 
   constructor(counting: Counting, versions: Versions, blamedCas?: Uint8Array) {
     this.counting = counting
@@ -83,52 +81,47 @@ export class Newer {
     }
   }
 
-  /** The versions newer than `version` whose write starts before the version's last read does. */
+  /** The versions newer than `version`, the nearest first, up to REACH_LIMIT of them. */
   reach(version: number): Reach {
-    const { key } = this.counting
-    const { offset, operations } = this.members
-    let limit = Number.NEGATIVE_INFINITY
-    for (let i = offset[version]; i < offset[version + 1]; i++)
-      limit = Math.max(limit, key.start[operations[i]])
-    return this.reachUntil(version, limit)
-  }
-
-  /** The versions newer than `version` whose write starts before `limit`, in order of the search. */
-  reachUntil(version: number, limit: number): Reach {
     const known = this.#reaches.get(version)
-    if (known && known.limit >= limit) return known.reach
-    const { found, writer, count } = this.versions
-    const { key } = this.counting
+    if (known) return known
+    const { found, count } = this.versions
     const from = new Map<number, number>()
     const queue = [version]
+    /** the chain of cas that leads to the version being searched from: directly one after the other */
+    const chain = new Set<number>()
     const visit = (w: number, origin: number): void => {
-      if (w === version || w === 0 || from.has(w) || key.start[writer[w]] >= limit) return
+      if (w === version || w === 0 || chain.has(w) || from.has(w) || from.size >= REACH_LIMIT) return
       from.set(w, origin)
       queue.push(w)
     }
-    const searched = new Int32Array(this.#orders.length).fill(-1)
+    // Per order, from which place on everything has been visited.
+    const searched = this.#orders.map((order) => order.size)
     const expanded = new Set<number>()
-    let cut = false
-    for (let head = 0; head < queue.length && !cut; head++) {
+    for (let head = 0; head < queue.length && from.size < REACH_LIMIT; head++) {
+      const origin = queue[head]
+      chain.clear()
       // Whatever is newer than what V's own cas found is newer than V, unless that cas is itself blamed.
-      for (let v = queue[head]; v >= 0 && !expanded.has(v); v = this.blamedCas[v] ? -1 : found[v]) {
+      for (let v = origin; v >= 0 && !expanded.has(v); v = this.blamedCas[v] ? -1 : found[v]) {
         expanded.add(v)
-        if (v === 0) for (let w = 1; w < count && from.size < REACH_LIMIT; w++) visit(w, queue[head])
-        for (const w of this.#foundBy.get(v) ?? []) visit(w, queue[head])
+        chain.add(v)
+        if (v === 0) for (let w = 1; w < count && from.size < REACH_LIMIT; w++) visit(w, origin)
+        for (const w of this.#foundBy.get(v) ?? []) visit(w, origin)
         for (let o = 0; o < this.#orders.length; o++) {
           const order = this.#orders[o]
-          const least = order.leastEndOf(v)
-          if (least === Number.POSITIVE_INFINITY) continue
-          const first = order.firstAfter(least)
-          const stop = searched[o] < 0 ? order.stopAt(limit) : searched[o]
-          for (let i = first; i < stop && from.size < REACH_LIMIT; i++) visit(order.unitAt(i), queue[head])
-          if (first < stop) searched[o] = first
+          const first = order.firstAfter(order.leastEndOf(v))
+          // Along a chain its own members are passed over, so what was passed is not all visited.
+          const isChain = v !== origin
+          for (let i = first; i < (isChain ? order.size : searched[o]); i++) {
+            if (from.size >= REACH_LIMIT) break
+            visit(order.unitAt(i), origin)
+          }
+          if (!isChain && first < searched[o]) searched[o] = first
         }
       }
-      cut = from.size >= REACH_LIMIT
     }
-    const reach = { from, cut }
-    this.#reaches.set(version, { limit, reach })
+    const reach = { from }
+    this.#reaches.set(version, reach)
     return reach
   }
 
@@ -146,9 +139,7 @@ export class Newer {
 
   /** Whether W is newer than V. */
   isNewer(w: number, v: number): boolean {
-    const { key } = this.counting
-    const writer = this.versions.writer[w]
-    return writer >= 0 && this.reachUntil(v, nextAfter(key.start[writer])).from.has(w)
+    return this.reach(v).from.has(w)
   }
 
   /** How much clock error a pair survives, in the key's own time; Infinity when no clock explains it. */
@@ -195,11 +186,6 @@ export class Newer {
   }
 }
 
-/** A limit that lets in what starts at `time`. */
-function nextAfter(time: number): number {
-  return time + 0.5
-}
-
 /** An interval order of versions, searchable by start. */
 class SearchOrder {
   readonly #order: IntervalOrder
@@ -222,23 +208,19 @@ class SearchOrder {
     return this.#order.unit[this.#byStart[i]]
   }
 
+  /** How many entries there are. */
+  get size(): number {
+    return this.#byStart.length
+  }
+
   /** Place of the first start after `time`. */
   firstAfter(time: number): number {
-    return this.#search((start) => start <= time)
-  }
-
-  /** Place of the first start at or after `time`, where this order tells time. */
-  stopAt(time: number): number {
-    return this.#order.inSession ? this.#byStart.length : this.#search((start) => start < time)
-  }
-
-  #search(isBefore: (start: number) => boolean): number {
     const { maxStart } = this.#order
     let low = 0
     let high = this.#byStart.length
     while (low < high) {
       const middle = (low + high) >> 1
-      if (isBefore(maxStart[this.#byStart[middle]])) low = middle + 1
+      if (maxStart[this.#byStart[middle]] <= time) low = middle + 1
       else high = middle
     }
     return low
