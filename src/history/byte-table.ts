@@ -23,8 +23,15 @@ export class ByteTable implements Names {
   /** The id of these bytes, a new one when they are new. */
   intern(bytes: Uint8Array, from: number, to: number): number {
     let hash = this.#seed ^ (to - from)
-    for (let i = from; i < to; i++) hash = Math.imul(hash ^ bytes[i], 0x01000193)
-    hash = (hash ^ (hash >>> 15)) >>> 0
+    let at = from
+    for (const whole = to - 3; at < whole; at += 4) {
+      const word = bytes[at] | (bytes[at + 1] << 8) | (bytes[at + 2] << 16) | (bytes[at + 3] << 24)
+      hash = Math.imul(hash ^ word, 0x9e3779b1)
+      hash ^= hash >>> 15
+    }
+    for (; at < to; at++) hash = Math.imul(hash ^ bytes[at], 0x01000193)
+    hash = Math.imul(hash ^ (hash >>> 16), 0x85ebca6b)
+    hash = (hash ^ (hash >>> 13)) >>> 0
     const slots = this.#slots
     const mask = slots.length - 1
     let slot = hash & mask

@@ -68,11 +68,14 @@ export interface ScanFailure {
   readonly expected: string
 }
 
-/** Field names by length, as bytes. */
+/** Field → its name as bytes. */
+const FIELD_BYTES = FIELDS.map((name) => new TextEncoder().encode(name))
+
+/** The same by length. */
 const BY_LENGTH: { field: number; bytes: Uint8Array }[][] = []
-for (const [field, name] of FIELDS.entries()) {
-  BY_LENGTH[name.length] ??= []
-  BY_LENGTH[name.length].push({ field, bytes: new TextEncoder().encode(name) })
+for (const [field, bytes] of FIELD_BYTES.entries()) {
+  BY_LENGTH[bytes.length] ??= []
+  BY_LENGTH[bytes.length].push({ field, bytes })
 }
 
 export class RecordScanner {
@@ -92,6 +95,10 @@ export class RecordScanner {
   #at = 0
   #end = 0
   #special = 0
+  /** members seen in this record so far */
+  #member = 0
+  /** place of a member in its record → the field that stood there last */
+  readonly #order = new Int32Array(16).fill(-1)
   readonly #unknown: string[] = []
   readonly #containers = new Uint8Array(DEPTH_LIMIT + 1)
 
@@ -102,6 +109,7 @@ export class RecordScanner {
     this.#end = to
     this.type.fill(ABSENT)
     this.#unknown.length = 0
+    this.#member = 0
     if (!this.#object()) return this.#blame(from, to)
     this.#white()
     if (this.#at < to) {
@@ -188,6 +196,24 @@ export class RecordScanner {
 
   /** The field with this name, UNKNOWN, or DUPLICATE for an unknown name that was there before. */
   #fieldOf(from: number, to: number): number {
+    // Records of one recorder have their members in one order.
+    const member = this.#member++
+    const guess = this.#order[member]
+    if (guess >= 0 && this.#special === 0 && this.#isNamed(guess, from, to)) return guess
+    const field = this.#findField(from, to)
+    if (member < this.#order.length) this.#order[member] = field
+    return field
+  }
+
+  #isNamed(field: number, from: number, to: number): boolean {
+    const name = FIELD_BYTES[field]
+    if (name.length !== to - from) return false
+    const { bytes } = this
+    for (let i = 0; i < name.length; i++) if (bytes[from + i] !== name[i]) return false
+    return true
+  }
+
+  #findField(from: number, to: number): number {
     let bytes = this.bytes
     let [start, stop] = [from, to]
     if (this.#special) {

@@ -8,6 +8,7 @@
  */
 import type { PairRule, Role, Scope } from '../promises/promise.js'
 import { type Counting, scopeOf } from './counting.js'
+import { IndexMap } from './index-map.js'
 import type { IntervalOrder } from './interval-orders.js'
 import type { KeyHistory } from './key-history.js'
 import { isRead } from './roles.js'
@@ -158,7 +159,7 @@ function buildOrder(
   { end, start, inSession }: { end: Float64Array; start: Float64Array; inSession: boolean },
   closing: Uint8Array | undefined,
 ): IntervalOrder | undefined {
-  const entries = new Entries(Math.min(2 * members.length, unitOf.length))
+  const entries = new Entries(Math.min(2 * members.length, unitOf.length), unitOf.length)
   const { writeOf } = versions
   for (let m = 0; m < members.length; m++) {
     const p = members[m]
@@ -182,12 +183,14 @@ class Entries {
   leastEnd = Number.POSITIVE_INFINITY
   greatestStart = Number.NEGATIVE_INFINITY
   #count = 0
-  readonly #entryOf = new Map<number, number>()
+  readonly #entryOf: IndexMap
   readonly #unit: Int32Array
   readonly #minEnd: Float64Array
   readonly #maxStart: Float64Array
 
-  constructor(most: number) {
+  /** At most `most` entries of units below `units`. */
+  constructor(most: number, units: number) {
+    this.#entryOf = new IndexMap(units, most)
     this.#unit = new Int32Array(most)
     this.#minEnd = new Float64Array(most)
     this.#maxStart = new Float64Array(most)
@@ -195,7 +198,7 @@ class Entries {
 
   of(unit: number): number {
     const known = this.#entryOf.get(unit)
-    if (known !== undefined) return known
+    if (known >= 0) return known
     const e = this.#count++
     this.#entryOf.set(unit, e)
     this.#unit[e] = unit

@@ -5,6 +5,7 @@
  * that no read depends on is left out. A cas is a read of one version and the write of another.
  */
 import { CAS, NO_VALUE } from '../history/columns.js'
+import { IndexMap } from './index-map.js'
 import type { KeyHistory } from './key-history.js'
 import { precedes } from './precedence.js'
 import { isRead, isWrite, readValue } from './roles.js'
@@ -48,7 +49,7 @@ export interface Versions {
 export function findVersions(key: KeyHistory, resolved?: Int32Array): Versions {
   const { n } = key
   const initialValue = key.initial === NO_VALUE ? unknownInitial(key) : key.initial
-  const writersByValue = groupWriters(key)
+  const writers = findWriters(key)
 
   // What each reader saw, as a local write index, -1 for the initial value, or a negative code below -1.
   const saw = new Int32Array(n).fill(NOTHING)
@@ -56,13 +57,12 @@ export function findVersions(key: KeyHistory, resolved?: Int32Array): Versions {
   const look = (p: number, value: number): number => {
     if (resolved && isKnown(resolved[p])) return resolved[p]
     if (value === NO_VALUE) return AMBIGUOUS
-    const writers = writersByValue.get(value)
-    const fromInitial = value === initialValue
-    if (writers === undefined) {
-      if (fromInitial) return INITIAL
+    const writer = writers.get(value)
+    if (writer < 0) {
+      if (value === initialValue) return INITIAL
       return key.offered.has(value) ? OFFERED_ONLY : UNWRITTEN
     }
-    return typeof writers === 'number' && !fromInitial ? writers : AMBIGUOUS
+    return writer === SEVERAL || value === initialValue ? AMBIGUOUS : writer - 1
   }
   for (let p = 0; p < n; p++) {
     if (!isRead(key, p)) continue
@@ -136,17 +136,16 @@ function isKnown(resolved: number): boolean {
   return resolved >= INITIAL
 }
 
-/** Value id → the one local write of it, or the list of several. */
-function groupWriters(key: KeyHistory): Map<number, number | number[]> {
-  const groups = new Map<number, number | number[]>()
+/** In the answers of `findWriters`: several writes could have put the value there. */
+const SEVERAL = 0
+
+/** Value id → 1 + the one local write of it, SEVERAL, or -1 where nobody wrote it. */
+function findWriters(key: KeyHistory): IndexMap {
+  const writers = new IndexMap(key.history.values.size, key.n)
   for (let p = 0; p < key.n; p++) {
-    if (!isWrite(key, p)) continue
-    const others = groups.get(key.value[p])
-    if (others === undefined) groups.set(key.value[p], p)
-    else if (typeof others === 'number') groups.set(key.value[p], [others, p])
-    else others.push(p)
+    if (isWrite(key, p)) writers.set(key.value[p], writers.get(key.value[p]) < 0 ? p + 1 : SEVERAL)
   }
-  return groups
+  return writers
 }
 
 /** Under `initialUnknown`: the first value read that nobody wrote or offered. */
