@@ -65,19 +65,66 @@ export interface KeyHistory {
 export interface KeyIndex {
   readonly offset: Int32Array
   readonly operations: Int32Array
+  /** the columns in the same order, where a key's operations stand far apart in the history's own */
+  readonly columns: OperationColumns | undefined
 }
+
+/** The columns that a key is gathered from, indexed by operation or by place in a KeyIndex. */
+interface OperationColumns {
+  readonly client: Int32Array
+  readonly host: Int32Array
+  readonly kind: Uint8Array
+  readonly outcome: Uint8Array
+  readonly applied: Uint8Array
+  readonly value: Int32Array
+  readonly extra: Int32Array
+  readonly hasEnd: Uint8Array
+  readonly startOffset: Float64Array | undefined
+  readonly endOffset: Float64Array | undefined
+}
+
+/** From so many keys on the columns are copied into key order: gathering would miss the cache at every step. */
+const REGROUPED_FROM = 256
 
 /** Groups the operations by key with one counting sort, O(operations + keys). */
 export function indexByKey(history: History): KeyIndex {
   const keys = history.keys.size
   const offset = new Int32Array(keys + 1)
-  const { key, count } = history
+  const { key, count, times } = history
   for (let i = 0; i < count; i++) offset[key[i] + 1]++
   for (let k = 0; k < keys; k++) offset[k + 1] += offset[k]
   const next = offset.slice(0, keys)
   const operations = new Int32Array(count)
-  for (let i = 0; i < count; i++) operations[next[key[i]]++] = i
-  return { offset, operations }
+  const place = new Int32Array(count)
+  for (let i = 0; i < count; i++) {
+    const at = next[key[i]]++
+    place[i] = at
+    operations[at] = i
+  }
+  if (keys < REGROUPED_FROM) return { offset, operations, columns: undefined }
+  const columns = {
+    client: scattered(history.client, place, new Int32Array(count)),
+    host: scattered(history.host, place, new Int32Array(count)),
+    kind: scattered(history.kind, place, new Uint8Array(count)),
+    outcome: scattered(history.outcome, place, new Uint8Array(count)),
+    applied: scattered(history.applied, place, new Uint8Array(count)),
+    value: scattered(history.value, place, new Int32Array(count)),
+    extra: scattered(history.extra, place, new Int32Array(count)),
+    hasEnd: scattered(history.hasEnd, place, new Uint8Array(count)),
+    startOffset: times.startOffset && scattered(times.startOffset, place, new Float64Array(count)),
+    endOffset: times.endOffset && scattered(times.endOffset, place, new Float64Array(count)),
+  }
+  return { offset, operations, columns }
+}
+
+/** Entry i of a column goes to place[i]: read in a row, written to as many streams as there are keys. */
+function scattered<A extends Int32Array | Uint8Array | Float64Array>(
+  column: A,
+  place: Int32Array,
+  into: A,
+): A {
+  for (let i = 0; i < place.length; i++) into[place[i]] = column[i]
+  return into
 }
 
 /**
@@ -92,7 +139,11 @@ export function gatherKey(
 ): KeyHistory {
   const from = index.offset[keyId]
   const to = index.offset[keyId + 1]
-  return gatherOperations(history, index.operations.subarray(from, to), keyId, clockErrorNs)
+  if (!index.columns)
+    return gatherOperations(history, index.operations.subarray(from, to), keyId, clockErrorNs)
+  const places = new Int32Array(to - from)
+  for (let p = from; p < to; p++) places[p - from] = p
+  return gather(history, index.columns, places, index.operations, keyId, clockErrorNs)
 }
 
 /** As `gatherKey`, over any operations of one key, given in input order. */
@@ -102,7 +153,21 @@ export function gatherOperations(
   keyId: number,
   clockErrorNs: bigint,
 ): KeyHistory {
-  const { kind, outcome, applied, value, extra, saw } = history
+  const { startOffset, endOffset } = history.times
+  return gather(history, { ...history, startOffset, endOffset }, operations, undefined, keyId, clockErrorNs)
+}
+
+/** Gathers entries of columns; `operationOf` tells the operation of an entry, where they are not the same. */
+function gather(
+  history: History,
+  columns: OperationColumns,
+  operations: Int32Array,
+  operationOf: Int32Array | undefined,
+  keyId: number,
+  clockErrorNs: bigint,
+): KeyHistory {
+  const { client, host, kind, outcome, applied, value, extra } = columns
+  const { saw } = history
   const offered = new Set<number>()
   let hasIncrements = false
   let hasWrites = false
@@ -121,7 +186,7 @@ export function gatherOperations(
     }
     kept[n++] = i
   }
-  const times = gatherTimes(history, kept.subarray(0, n), clockErrorNs)
+  const times = gatherTimes(history, columns, kept.subarray(0, n), operationOf, clockErrorNs)
   const order = sortedOrder(n, times.start, times.end)
 
   const initial = history.initial.get(keyId)
@@ -150,15 +215,16 @@ export function gatherOperations(
   for (let p = 0; p < n; p++) {
     const from = order[p]
     const i = kept[from]
-    result.operation[p] = i
-    result.client[p] = history.client[i]
-    result.host[p] = history.host[i]
+    const operation = operationOf ? operationOf[i] : i
+    result.operation[p] = operation
+    result.client[p] = client[i]
+    result.host[p] = host[i]
     result.kind[p] = kind[i]
     result.acked[p] = outcome[i] === ACKED ? 1 : 0
     result.applied[p] = applied[i]
     result.value[p] = kind[i] === DELETE ? 0 : value[i]
     result.extra[p] = extra[i]
-    if (saw) result.saw[p] = saw[i]
+    if (saw) result.saw[p] = saw[operation]
     result.start[p] = times.start[from]
     result.end[p] = times.end[from]
     result.sureEnd[p] = times.sureEnd[from]
@@ -172,25 +238,30 @@ interface KeyTimes {
   sureEnd: Float64Array
 }
 
-/** Times of the given operations as doubles that compare as the exact ones do. */
-function gatherTimes(history: History, operations: Int32Array, clockErrorNs: bigint): KeyTimes {
-  const n = operations.length
+/** Times of the given entries as doubles that compare as the exact ones do. */
+function gatherTimes(
+  history: History,
+  { startOffset, endOffset, hasEnd }: OperationColumns,
+  entries: Int32Array,
+  operationOf: Int32Array | undefined,
+  clockErrorNs: bigint,
+): KeyTimes {
+  const n = entries.length
+  const uncertainty = 2n * clockErrorNs
+  if (!startOffset || !endOffset || uncertainty > 2n ** 52n) {
+    return rankTimes(history, operationOf ? entries.map((i) => operationOf[i]) : entries, uncertainty)
+  }
   const start = new Float64Array(n)
   const end = new Float64Array(n)
   const sureEnd = new Float64Array(n)
-  const { startOffset, endOffset } = history.times
-  const uncertainty = 2n * clockErrorNs
-  if (startOffset && endOffset && uncertainty <= 2n ** 52n) {
-    const add = Number(uncertainty)
-    for (let p = 0; p < n; p++) {
-      const i = operations[p]
-      start[p] = startOffset[i]
-      end[p] = history.hasEnd[i] ? endOffset[i] : Number.POSITIVE_INFINITY
-      sureEnd[p] = end[p] + add
-    }
-    return { start, end, sureEnd }
+  const add = Number(uncertainty)
+  for (let p = 0; p < n; p++) {
+    const i = entries[p]
+    start[p] = startOffset[i]
+    end[p] = hasEnd[i] ? endOffset[i] : Number.POSITIVE_INFINITY
+    sureEnd[p] = end[p] + add
   }
-  return rankTimes(history, operations, uncertainty)
+  return { start, end, sureEnd }
 }
 
 /** Spans that no double holds: every time is replaced by its rank among all that will be compared. */
