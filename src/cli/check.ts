@@ -23,6 +23,7 @@ import { prepareFolder, writeWhole } from './write-files.js'
 
 export interface CheckOptions {
   promise?: string[]
+  promises?: string
   clockError?: bigint
   keys?: string[]
   format: 'text' | 'json' | 'ndjson'
@@ -37,7 +38,9 @@ export async function runCheck(
   options: CheckOptions,
   terminal: Terminal,
 ): Promise<ExitStatus> {
-  const promises = requests(options.promise ?? ['linearizable'])
+  // A promises file alone does not ask for linearizable; with --promise both count.
+  const typed = options.promise ?? (options.promises === undefined ? ['linearizable'] : [])
+  const promises = distinct([...requests(typed), ...(await promisesFrom(options.promises))])
   if (options.out !== undefined) await prepareFolder(options.out, options.force ?? false)
   const sources = await openSources(files, terminal)
   const progress = new Progress(terminal)
@@ -46,7 +49,11 @@ export async function runCheck(
     onProgress: (bytes) =>
       progress.show('reading', bytes, total === undefined ? undefined : Math.max(bytes, total)),
   })
-  if (options.keys) checkGlobs(history, options.keys)
+  if (options.keys) checkGlobs(history, options.keys, () => '--keys')
+  for (const { keys, place } of promises) {
+    if (keys !== '**')
+      checkGlobs(history, [keys], () => (place ? `${place.file}:${place.line}` : '--promise'))
+  }
   const { result, counterexamples } = await check(history, sources, {
     promises,
     ...(options.clockError === undefined ? {} : { clockErrorNs: options.clockError }),
@@ -86,21 +93,34 @@ function requests(typed: readonly string[]): PromiseRequest[] {
       throw error instanceof PromiseTrouble ? new UsageError(`--promise: ${error.message}`) : error
     }
   }
-  const names = promises.map(({ name }) => name)
-  const twice = names.find((name, i) => names.indexOf(name) !== i)
-  if (twice !== undefined) throw new UsageError(`--promise: ${JSON.stringify(twice)} is asked for twice`)
   return promises
 }
 
+/** Equal names are an error: the result tells promises apart by name. */
+function distinct(promises: PromiseRequest[]): PromiseRequest[] {
+  const names = promises.map(({ name }) => name)
+  const twice = names.find((name, i) => names.indexOf(name) !== i)
+  if (twice !== undefined) throw new UsageError(`the promise ${JSON.stringify(twice)} is asked for twice`)
+  return promises
+}
+
+async function promisesFrom(path: string | undefined): Promise<PromiseRequest[]> {
+  if (path === undefined) return []
+  const { parsePromisesFile } = await import('../promises/promises-file.js')
+  const chunks: Uint8Array[] = []
+  for await (const chunk of (await fileSource(path)).chunks()) chunks.push(new Uint8Array(chunk))
+  return parsePromisesFile(Buffer.concat(chunks).toString('utf8'), path)
+}
+
 /** A glob that no key matches is a mistake: a check of nothing must not pass. */
-function checkGlobs(history: History, globs: readonly string[]): void {
+function checkGlobs(history: History, globs: readonly string[], where: () => string): void {
   for (const glob of globs) {
     const matches = keyGlob(glob)
     let any = false
     for (let k = 0; k < history.keys.size && !any; k++) any = matches(history.keys.name(k))
     if (any) continue
     const names = Array.from({ length: Math.min(history.keys.size, 10_000) }, (_, k) => history.keys.name(k))
-    throw new UsageError(`--keys: no key matches ${JSON.stringify(glob)}${didYouMean(glob, names)}`)
+    throw new UsageError(`${where()}: no key matches ${JSON.stringify(glob)}${didYouMean(glob, names)}`)
   }
 }
 

@@ -31,6 +31,7 @@ export function buildProgram(terminal: Terminal, end: (status: ExitStatus) => vo
       'promise to check, with its parameters (repeatable; default linearizable)',
       collect,
     )
+    .option('--promises <file>', 'promises with their keys, YAML or JSON (docs/promises.md)')
     .option(
       '--clock-error <duration>',
       'how far clocks may be off, whatever the headers say (2ms)',

@@ -11,4 +11,6 @@ export interface PromiseRequest {
   readonly parameters: Readonly<Record<string, string | number>>
   /** glob of the keys it is claimed for */
   readonly keys: string
+  /** where it stands in a promises file */
+  readonly place?: { readonly file: string; readonly line: number }
 }

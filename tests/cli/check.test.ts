@@ -64,7 +64,7 @@ describe('exit statuses', () => {
     [['check', HARBOUR, '--promise', 'linearisable'], 'did you mean linearizable?'],
     [['check', HARBOUR, '--promise', 'durable within=2s'], 'has no parameter "within"; it takes settle'],
     [['check', HARBOUR, '--promise', 'bounded-staleness'], 'needs within or versions'],
-    [['check', HARBOUR, '--promise', 'regular', '--promise', 'regular'], 'asked for twice'],
+    [['check', HARBOUR, '--promise', 'regular', '--promise', 'regular'], 'is asked for twice'],
     [['check', HARBOUR, '--keys', 'berths/*'], 'no key matches "berths/*"'],
     [['check', HARBOUR, '--clock-error', 'two'], 'Expected a duration'],
     [['check', HARBOUR, '--format', 'jsn'], 'did you mean json?'],
@@ -181,6 +181,33 @@ describe('check options', () => {
     expect((await misread(['check', HARBOUR, '--out', out])).err).toContain('--force')
     expect((await misread(['check', HARBOUR, '--out', out, '--force', '--limit', '1'])).status).toBe(1)
     expect(readdirSync(join(out, 'counterexamples'))).toHaveLength(1)
+  })
+})
+
+describe('a promises file', () => {
+  const promises = file(
+    'promises.yaml',
+    'promises:\n  - name: gates\n    keys: "berth/*"\n    promise: read-your-writes\n  - name: counts\n    keys: "sailing/*/boarded"\n    promise: linearizable\n',
+  )
+
+  it('is checked promise by promise, each on its keys, and does not add linearizable', async () => {
+    const { out, status } = await misread(['check', HARBOUR, '--promises', promises, '--format', 'json'])
+    const result = resultSchema.parse(JSON.parse(out))
+    expect(status).toBe(1)
+    expect(
+      result.promises.map(({ name, keys, verdict, broken, holds }) => [name, keys, verdict, broken, holds]),
+    ).toEqual([
+      ['gates', 'berth/*', 'broken', 1, 8],
+      ['counts', 'sailing/*/boarded', 'broken', 3, 1],
+    ])
+    expect(result.findings.every(({ promise }) => promise === 'gates' || promise === 'counts')).toBe(true)
+  })
+
+  it('is an error where a glob matches no key, with the line', async () => {
+    const wrong = file('wrong.yaml', 'promises:\n  - promise: regular\n    keys: "berths/*"\n')
+    const { err, status } = await misread(['check', HARBOUR, '--promises', wrong])
+    expect(status).toBe(2)
+    expect(err).toMatch(/wrong\.yaml:2: no key matches "berths\/\*"/)
   })
 })
 
