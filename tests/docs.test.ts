@@ -38,7 +38,7 @@ describe('the documentation', () => {
       for (const [, script] of text.matchAll(/npm run ([a-z]+)/g))
         expect(Object.keys(scripts), page).toContain(script)
       for (const [, command] of text.matchAll(/misread ([a-z]+) [A-Zh-]/g))
-        expect(['check', 'survey'], page).toContain(command)
+        expect(['check', 'survey', 'compare'], page).toContain(command)
       for (const [option] of text.matchAll(/(?<=`)--[a-z-]+/g))
         expect(help, `${page} names ${option}`).toContain(option)
     }

@@ -5,6 +5,7 @@ import { createHash } from 'node:crypto'
 import { createReadStream } from 'node:fs'
 import { join } from 'node:path'
 import { check } from '../findings/check.js'
+import { compareResults } from '../findings/compare.js'
 import type { Result } from '../findings/result.js'
 import type { History } from '../history/columns.js'
 import { readHistory } from '../history/read.js'
@@ -13,11 +14,13 @@ import { keyGlob } from '../promises/glob.js'
 import { didYouMean } from '../promises/nearest.js'
 import { PromiseTrouble, parsePromise } from '../promises/parse-request.js'
 import type { PromiseRequest } from '../promises/request.js'
+import { compareText } from '../reports/compare-text.js'
 import { jsonReport } from '../reports/json.js'
 import { ndjsonReport } from '../reports/ndjson.js'
 import { textReport } from '../reports/text.js'
 import { type ExitStatus, UsageError } from './exit.js'
 import { Progress } from './progress.js'
+import { readResult } from './read-result.js'
 import { type Terminal, write } from './terminal.js'
 import { prepareFolder, writeWhole } from './write-files.js'
 
@@ -30,6 +33,7 @@ export interface CheckOptions {
   out?: string
   force?: boolean
   everyKey?: boolean
+  baseline?: string
   limit: number
 }
 
@@ -41,6 +45,7 @@ export async function runCheck(
   // A promises file alone does not ask for linearizable; with --promise both count.
   const typed = options.promise ?? (options.promises === undefined ? ['linearizable'] : [])
   const promises = distinct([...requests(typed), ...(await promisesFrom(options.promises))])
+  const baseline = options.baseline === undefined ? undefined : await readResult(options.baseline)
   if (options.out !== undefined) await prepareFolder(options.out, options.force ?? false)
   const sources = await openSources(files, terminal)
   const progress = new Progress(terminal)
@@ -80,7 +85,11 @@ export async function runCheck(
         ? await ndjsonReport(result)
         : textReport(result, { width, colour, limit, ...(out === undefined ? {} : { out }) })
   await write(terminal.out, shown)
-  return result.exit
+  if (!baseline || result.exit === 130) return result.exit
+  const comparison = compareResults(baseline, result)
+  await write(terminal.err, compareText({ ...comparison, misread: result.misread }, terminal))
+  if (comparison.exit === 1) return 1
+  return result.undecided.length > 0 ? 3 : 0
 }
 
 /** The promises as typed. Equal names are an error: the result tells them apart by name. */

@@ -46,6 +46,7 @@ export function buildProgram(terminal: Terminal, end: (status: ExitStatus) => vo
     )
     .option('--out <dir>', 'write result, report and counterexamples to a folder')
     .option('--force', 'let --out write into a folder that is not empty')
+    .option('--baseline <result>', 'end with 1 only for findings that this earlier result does not have')
     .option('--every-key', 'list every key in the result, not only those broken or undecided')
     .option('--limit <n>', 'findings in the text, and counterexample files', countOption, 20)
     .addHelpText(
@@ -66,6 +67,17 @@ export function buildProgram(terminal: Terminal, end: (status: ExitStatus) => vo
     .action(async (files: string[], options) => {
       const { runSurvey } = await import('./survey.js')
       end(await runSurvey(files, options, terminal))
+    })
+  program
+    .command('compare')
+    .description('findings that are new, gone or still there between two results')
+    .argument('<old>', 'result of an earlier check, JSON')
+    .argument('<new>', 'result of a later one')
+    .option('--format <format>', 'text or json', oneOf('text', 'json'), 'text')
+    .addHelpText('after', '\nExample:\n  misread compare main.json build.json\n')
+    .action(async (old: string, now: string, options) => {
+      const { runCompare } = await import('./compare.js')
+      end(await runCompare(old, now, options, terminal))
     })
   return program
 }

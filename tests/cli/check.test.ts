@@ -2,6 +2,7 @@ import { mkdtempSync, readdirSync, readFileSync, rmSync, writeFileSync } from 'n
 import { tmpdir } from 'node:os'
 import { join } from 'node:path'
 import { afterAll, describe, expect, it } from 'vitest'
+import { comparisonSchema } from '../../src/findings/compare.js'
 import { FINDING_KINDS } from '../../src/findings/kinds.js'
 import { resultSchema } from '../../src/findings/result.js'
 import { surveySchema } from '../../src/history/survey.js'
@@ -208,6 +209,59 @@ describe('a promises file', () => {
     const { err, status } = await misread(['check', HARBOUR, '--promises', wrong])
     expect(status).toBe(2)
     expect(err).toMatch(/wrong\.yaml:2: no key matches "berths\/\*"/)
+  })
+})
+
+describe('comparing runs', () => {
+  const result = async (name: string, text: string): Promise<string> =>
+    file(`${name}.json`, (await misread(['check', '-', '--format', 'json'], { input: text })).out)
+  // The same findings at other times, on another key of the same pattern, from other clients.
+  const later = BROKEN.replaceAll('"k"', '"berth/7"')
+    .replaceAll('"C"', '"D"')
+    .replace(/"(start|end)":(\d+)/g, (_, name, n) => `"${name}":${Number(n) + 1000}`)
+  const earlier = BROKEN.replaceAll('"k"', '"berth/12"')
+
+  it('a finding is known by what it is, not by lines, times and numbers in keys', async () => {
+    const [old, now] = [await result('old', earlier), await result('now', later)]
+    const { out, status } = await misread(['compare', old, now, '--format', 'json'])
+    const comparison = comparisonSchema.parse(JSON.parse(out))
+    expect(status).toBe(0)
+    expect(comparison).toMatchObject({
+      new: [],
+      gone: [],
+      still: [{ kind: 'stale-read', key: 'berth/#', old: 1, new: 1 }],
+    })
+  })
+
+  it('another kind is new, and one that does not come again is gone', async () => {
+    const lost = storyText('A w1 | A w2 | C r1 | D r1').replaceAll('"k"', '"berth/7"')
+    const { out, status } = await misread([
+      'compare',
+      await result('old', earlier),
+      await result('lost', lost),
+    ])
+    expect(status).toBe(1)
+    expect(out).toMatch(/new:\n {2}- lost-write on berth\/# under linearizable: 1 finding/)
+    expect(out).toMatch(/gone:\n {2}- stale-read/)
+  })
+
+  it('--baseline ends with 1 only for what is new', async () => {
+    const old = await result('old', earlier)
+    expect((await misread(['check', '-', '--baseline', old], { input: later })).status).toBe(0)
+    expect(
+      (await misread(['check', '-', '--baseline', old], { input: storyText('B r1 | A w1') })).status,
+    ).toBe(1)
+    expect((await misread(['check', '-', '--baseline', old], { input: SOUND })).status).toBe(0)
+  })
+
+  it('refuses what is no result, saying where', async () => {
+    const { err, status } = await misread([
+      'compare',
+      file('none.json', '{"result":2}'),
+      file('none.json', '{"result":2}'),
+    ])
+    expect(status).toBe(2)
+    expect(err).toContain('none.json: found at result:')
   })
 })
 

@@ -1,7 +1,9 @@
 /** Run by `npm run schemas`. */
+import { comparisonPublication } from './comparison-publication.js'
 import { historyPublication } from './history-publication.js'
 import { publish } from './publish.js'
 import { resultPublication } from './result-publication.js'
 import { surveyPublication } from './survey-publication.js'
 
-for (const publication of [historyPublication, resultPublication, surveyPublication]) publish(publication)
+for (const publication of [comparisonPublication, historyPublication, resultPublication, surveyPublication])
+  publish(publication)
