@@ -34,6 +34,7 @@ export interface CheckOptions {
   force?: boolean
   everyKey?: boolean
   baseline?: string
+  final?: string
   limit: number
 }
 
@@ -48,9 +49,11 @@ export async function runCheck(
   const baseline = options.baseline === undefined ? undefined : await readResult(options.baseline)
   if (options.out !== undefined) await prepareFolder(options.out, options.force ?? false)
   const sources = await openSources(files, terminal)
+  const [final] = options.final === undefined ? [] : await openSources([options.final], terminal)
   const progress = new Progress(terminal)
   const total = totalSize(sources)
   const history = await readHistory(sources, {
+    ...(final ? { final } : {}),
     onProgress: (bytes) =>
       progress.show('reading', bytes, total === undefined ? undefined : Math.max(bytes, total)),
   })
@@ -59,7 +62,7 @@ export async function runCheck(
     if (keys !== '**')
       checkGlobs(history, [keys], () => (place ? `${place.file}:${place.line}` : '--promise'))
   }
-  const { result, counterexamples } = await check(history, sources, {
+  const { result, counterexamples } = await check(history, final ? [...sources, final] : sources, {
     promises,
     ...(options.clockError === undefined ? {} : { clockErrorNs: options.clockError }),
     ...(options.keys ? { keys: options.keys } : {}),

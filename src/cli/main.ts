@@ -47,6 +47,7 @@ export function buildProgram(terminal: Terminal, end: (status: ExitStatus) => vo
     .option('--out <dir>', 'write result, report and counterexamples to a folder')
     .option('--force', 'let --out write into a folder that is not empty')
     .option('--baseline <result>', 'end with 1 only for findings that this earlier result does not have')
+    .option('--final <file>', 'a dump of the store taken after the run, as closing reads (docs/format.md)')
     .option('--every-key', 'list every key in the result, not only those broken or undecided')
     .option('--limit <n>', 'findings in the text, and counterexample files', countOption, 20)
     .addHelpText(

@@ -2,7 +2,7 @@
  * Counterexamples as histories of their own: a header, then operations taken unchanged from the input.
  */
 import { decideKey } from '../deciders/decide-key.js'
-import type { History } from '../history/columns.js'
+import { fileOf, type History } from '../history/columns.js'
 import type { LinePlace } from '../history/lines.js'
 import { readHistory } from '../history/read.js'
 import { rewriteTimes } from '../history/rewrite-times.js'
@@ -27,7 +27,11 @@ export function counterexampleText(
   clockErrorNs: bigint,
   { operations, initialCount }: Counterexample,
 ): string {
-  const lines = operations.flatMap((operation) => records.of(operation))
+  const lines = operations.flatMap((operation) => {
+    const { isDump } = history.files[fileOf(history, operation)]
+    const [{ place }] = records.of(operation)
+    return isDump ? [{ place, text: dumpedRecord(history, operation) }] : records.of(operation)
+  })
   lines.sort((a, b) => a.place.file - b.place.file || a.place.line - b.place.line)
   const units = new Set(lines.map(({ place }) => history.files[place.file].unitNs))
   const unitNs = units.size === 1 ? [...units][0] : 1n
@@ -35,6 +39,15 @@ export function counterexampleText(
     units.size === 1 ? text : rewriteTimes(text, history.files[place.file].unitNs),
   )
   return `${[header(history, keyId, clockErrorNs, initialCount, unitNs), ...texts].join('\n')}\n`
+}
+
+/** What a dump held, as the record of a read, in nanoseconds. */
+function dumpedRecord(history: History, i: number): string {
+  const [client, key] = [history.clients.name(history.client[i]), history.keys.name(history.key[i])].map(
+    (name) => JSON.stringify(name),
+  )
+  const at = history.times.startNs(i)
+  return `{"client":${client},"op":"read","key":${key},"value":${history.values.text(history.value[i])},"start":${at},"end":${at}}`
 }
 
 function header(

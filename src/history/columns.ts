@@ -71,6 +71,8 @@ export interface InputFile {
   readonly unitNs: bigint
   /** index of the file's first operation in the columns (its operations are contiguous) */
   readonly firstOperation: number
+  /** a dump of the store: its lines are keys and values, not records */
+  readonly isDump?: true
 }
 
 /** A state of affairs worth a warning that is not an error. */

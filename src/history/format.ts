@@ -80,3 +80,17 @@ export const markSchema = z.looseObject({
 
 /** Any line of a history. */
 export const recordSchema = z.union([operationSchema, markSchema, headerSchema, closeSchema])
+
+/** The first line of a dump of the store. */
+const dumpHeaderSchema = z.looseObject({
+  dump: z.literal(1),
+  time,
+  unit: z.enum(['ns', 'us', 'ms', 's']).exactOptional(),
+  complete: z.boolean().exactOptional().describe('a key of the history that the dump lacks was absent'),
+})
+
+/** Any other line of a dump. */
+const dumpEntrySchema = z.looseObject({ key: z.string(), value: json })
+
+/** Any line of a dump. */
+export const dumpSchema = z.union([dumpHeaderSchema, dumpEntrySchema])

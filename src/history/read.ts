@@ -2,6 +2,7 @@
  * Reads a history: all files, line by line, into columns (format.md).
  */
 import type { History, Mark } from './columns.js'
+import { readDump } from './dump.js'
 import { visitLines } from './lines.js'
 import { InputError, type InputProblem, PROBLEM_LIMIT } from './problems.js'
 import { type Place, RecordReader } from './record-reader.js'
@@ -10,6 +11,8 @@ import { unitNs } from './time-text.js'
 import { checkCounterValues, checkSessions } from './whole-history.js'
 
 export interface ReadOptions {
+  /** a dump of the store taken after the run, added as reads by a client of its own; the last of the files */
+  readonly final?: ByteSource
   /** told now and then how many bytes (decompressed) have been read */
   onProgress?(bytes: number): void
 }
@@ -49,7 +52,7 @@ async function readAll(
   limit: number,
 ): Promise<TolerantReading> {
   const reader = new RecordReader()
-  const problems = new Problems(sources, limit)
+  const problems = new Problems(options.final ? [...sources, options.final] : sources, limit)
   let total = 0
   for (const [file, source] of sources.entries()) {
     if (problems.isFull) break
@@ -61,6 +64,9 @@ async function readAll(
     reader.builder.files[file] = { ...last, bytes: source.sizeBytes ?? bytes }
   }
   if (!problems.isFull) for (const problem of reader.splits.unopened()) problems.add(problem)
+  if (options.final && !problems.isFull) {
+    await readDump(reader.builder, options.final, (problem) => problems.add(problem))
+  }
   const history = finish(reader)
   if (!problems.isFull) {
     checkSessions(history, (problem) => problems.add(problem))

@@ -1,9 +1,16 @@
 /** Run by `npm run schemas`. */
 import { comparisonPublication } from './comparison-publication.js'
+import { dumpPublication } from './dump-publication.js'
 import { historyPublication } from './history-publication.js'
 import { publish } from './publish.js'
 import { resultPublication } from './result-publication.js'
 import { surveyPublication } from './survey-publication.js'
 
-for (const publication of [comparisonPublication, historyPublication, resultPublication, surveyPublication])
+for (const publication of [
+  comparisonPublication,
+  dumpPublication,
+  historyPublication,
+  resultPublication,
+  surveyPublication,
+])
   publish(publication)
