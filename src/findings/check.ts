@@ -2,6 +2,7 @@
  * Checks a history against promises and tells what it finds: the main job, from columns to result.
  */
 
+import { decideCausal } from '../deciders/causal/decide.js'
 import { decideKey, type KeyKind, kindOfKey } from '../deciders/decide-key.js'
 import type { Decision } from '../deciders/decision.js'
 import {
@@ -20,8 +21,9 @@ import type { ByteSource } from '../history/source.js'
 import { type Counting, countPairs } from '../order/counting.js'
 import { gatherKey, indexByKey, type KeyHistory, type KeyIndex } from '../order/key-history.js'
 import { keyGlob } from '../promises/glob.js'
-import type { PromiseRequest } from '../promises/request.js'
+import type { CausalPromiseRequest, KeyPromiseRequest, PromiseRequest } from '../promises/request.js'
 import { VERSION } from '../version.js'
+import { findCausal } from './causal.js'
 import { findCounter } from './counter/find.js'
 import { type Counterexample, findCounterexample } from './counterexample.js'
 import { counterexamplePath, counterexampleText, isBrokenAgain } from './counterexample-text.js'
@@ -87,7 +89,8 @@ export async function check(
   for (const { finding } of named) for (const { operation } of finding.exhibits) records.want(operation)
   const examples = new Map<NamedFinding, Counterexample>()
   for (const each of named.slice(0, request.counterexamples ?? 0)) {
-    const rule = request.promises.find(({ name }) => name === each.promise)!.rule
+    const { rule } = request.promises.find(({ name }) => name === each.promise)!
+    if (!rule) continue
     const counting = countPairs(gatherKey(history, index, each.finding.keyId, clockErrorNs), rule)
     const example = findCounterexample(counting, history.values, each.finding)
     if (!example) continue
@@ -105,7 +108,7 @@ export async function check(
     if (example) {
       const { rule } = request.promises.find(({ name }) => name === each.promise)!
       const text = counterexampleText(history, records, each.finding.keyId, clockErrorNs, example)
-      if (await isBrokenAgain(text, rule)) {
+      if (rule && (await isBrokenAgain(text, rule))) {
         const path = counterexamplePath(id, finding.kind, history.keys.name(each.finding.keyId))
         counterexamples.push({ path, text })
         findings.push({ ...finding, counterexample: path })
@@ -175,6 +178,7 @@ class Run {
   readonly #tallies = new Map<string, Tally>()
   readonly #keys: KeyResult[] = []
   readonly #undecided: Result['undecided'] = []
+  readonly #causal = new Map<string, { verdict: PromiseResult['verdict']; leftOut: number }>()
   #interrupted = false
 
   constructor(history: History, index: KeyIndex, clockErrorNs: bigint, request: CheckRequest) {
@@ -190,7 +194,9 @@ class Run {
   async decideAll(): Promise<void> {
     const { promises, keys, onProgress, signal } = this.#request
     const isWanted = keys ? keys.map(keyGlob) : undefined
-    const claims = promises.map((promise) => ({ promise, matches: keyGlob(promise.keys) }))
+    const claims = promises
+      .filter((promise): promise is KeyPromiseRequest => promise.rule !== undefined)
+      .map((promise) => ({ promise, matches: keyGlob(promise.keys) }))
     const { offset } = this.#index
     const total = offset.length - 1
     let since = 0
@@ -208,9 +214,35 @@ class Run {
       onProgress?.(keyId + 1, total)
       await breathe()
     }
+    for (const promise of promises) if (promise.causal) this.#decideCausal(promise, isWanted)
   }
 
-  #decide(keyId: number, name: string, asked: readonly PromiseRequest[]): void {
+  /** One verdict over all the keys that are in. */
+  #decideCausal(promise: CausalPromiseRequest, isWanted: ((name: string) => boolean)[] | undefined): void {
+    const { name, causal, keys } = promise
+    const matches = keyGlob(keys)
+    const outcome = this.#interrupted
+      ? undefined
+      : decideCausal(this.#history, this.#index, causal, (keyId) => {
+          const key = this.#history.keys.name(keyId)
+          return matches(key) && (!isWanted || isWanted.some((wanted) => wanted(key)))
+        })
+    if (!outcome || outcome.verdict === 'undecided') {
+      const reason = outcome
+        ? 'every key is left out: none is a register whose values are written once'
+        : 'the check was interrupted before it'
+      this.#undecided.push({ promise: name, reason })
+    }
+    this.#causal.set(name, {
+      verdict: outcome?.verdict ?? 'undecided',
+      leftOut: outcome?.causal.keysLeftOut ?? 0,
+    })
+    if (outcome?.verdict !== 'broken') return
+    for (const finding of findCausal(this.#history, this.#index, outcome))
+      this.findings.push({ promise: name, finding })
+  }
+
+  #decide(keyId: number, name: string, asked: readonly KeyPromiseRequest[]): void {
     const key = gatherKey(this.#history, this.#index, keyId, this.#clockErrorNs)
     const verdicts: KeyResult['verdicts'] = {}
     const untested: string[] = []
@@ -262,7 +294,7 @@ class Run {
   }
 
   /** The key's margin under a promise, from those of its findings. */
-  #margin(key: KeyHistory, { rule }: PromiseRequest, found: readonly RawFinding[]): Margin {
+  #margin(key: KeyHistory, { rule }: KeyPromiseRequest, found: readonly RawFinding[]): Margin {
     const best = found.reduce<Margin>(
       (margin, finding) => greater(margin, finding.margin ?? key.clockErrorNs),
       key.clockErrorNs,
@@ -270,7 +302,7 @@ class Run {
     return keyMargin(this.#history, this.#index, key.keyId, rule, key.clockErrorNs, best)
   }
 
-  #find(key: KeyHistory, { rule }: PromiseRequest): RawFinding[] {
+  #find(key: KeyHistory, { rule }: KeyPromiseRequest): RawFinding[] {
     const counting = countPairs(key, rule)
     return this.#findOn(counting).map((finding) => {
       const margin = findingMargin(counting, this.#index, finding)
@@ -294,7 +326,8 @@ class Run {
   }
 
   result(findings: Finding[]): Result {
-    const promises = this.#request.promises.map(({ name, rule, parameters, keys }): PromiseResult => {
+    const promises = this.#request.promises.map(({ name, rule, causal, parameters, keys }): PromiseResult => {
+      if (causal) return { name, promise: causal, parameters, keys, ...this.#causal.get(name)! }
       const tally = this.#tallies.get(name)!
       const verdict =
         tally.broken > 0 ? 'broken' : tally.undecided > 0 || tally.holds === 0 ? 'undecided' : 'holds'
@@ -362,7 +395,9 @@ function tell(history: History, records: Records, { promise, finding }: NamedFin
     kind: finding.kind,
     ...(also.length > 0 ? { also: [...also] } : {}),
     promise,
-    key: history.keys.name(finding.keyId),
+    ...(finding.keyIds
+      ? { keys: finding.keyIds.map((keyId) => history.keys.name(keyId)) }
+      : { key: history.keys.name(finding.keyId) }),
     summary: finding.summary,
     blamed: place.get(finding.blamed)!,
     ...(cause === undefined ? {} : { cause }),

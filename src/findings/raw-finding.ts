@@ -22,6 +22,10 @@ export type Link =
   | { readonly type: 'returned'; readonly before: number; readonly after: number }
   /** `after`, a cas, found the version that `before` wrote (or the initial value): directly after it */
   | { readonly type: 'found'; readonly before: number; readonly after: number }
+  /** the same client did `before` first (causal promises: clocks play no part) */
+  | { readonly type: 'session'; readonly before: number; readonly after: number }
+  /** a read of what `after` wrote already depended on `before`, so agreeing replicas order them so */
+  | { readonly type: 'conflict'; readonly before: number; readonly after: number }
   /** `before` returned (or found) a version that `after` overwrote, so it should come before `after` */
   | { readonly type: 'overwritten'; readonly before: number; readonly after: number }
 
@@ -41,6 +45,8 @@ export interface RawFinding {
   /** other kinds that fit, worst first */
   readonly also: readonly FindingKind[]
   readonly keyId: number
+  /** where it spans several keys: all of them */
+  readonly keyIds?: readonly number[]
   /** operation index of the blamed operation */
   readonly blamed: number
   /** operation index of the overwriting write, or -1: findings of one cause are told together */

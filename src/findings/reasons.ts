@@ -24,6 +24,10 @@ export function reasonOf(history: History, link: Link): string {
       return `it wrote the ${quoted(history.values.text(history.value[before]))} that the other returned${history.outcome[before] === UNSURE ? ', so it took effect' : ''}`
     case 'found':
       return 'the other, a cas, found the version that it wrote, so it comes directly after it'
+    case 'session':
+      return 'the same client did it first'
+    case 'conflict':
+      return 'a read of what the other wrote already depended on it, so the other came later'
     case 'overwritten':
       return 'it returned an older version than the other wrote, so it should have come before it'
   }

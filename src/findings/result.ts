@@ -104,10 +104,10 @@ const findingOperationSchema = z.object({
 
 const chainStepSchema = z.object({
   type: z
-    .enum(['pair', 'initial', 'returned', 'found', 'overwritten'])
+    .enum(['pair', 'initial', 'returned', 'found', 'session', 'conflict', 'overwritten'])
     .describe(
       'pair: a counted pair; initial: the initial value comes first; returned: after read what before wrote; ' +
-        'found: a cas directly after what it found; overwritten: before returned what after overwrote',
+        'found: a cas directly after what it found; session: the same client before; conflict: a read of after depended on before; overwritten: before returned what after overwrote',
     ),
   before: index.exactOptional().describe('index into operations; absent: the initial value'),
   after: index,

@@ -5,7 +5,7 @@ import { parseDuration } from './duration.js'
 import { didYouMean } from './nearest.js'
 import type { SingleKeyPromiseName } from './promise.js'
 import { SINGLE_KEY_PROMISES } from './promise.js'
-import type { PromiseRequest } from './request.js'
+import { CAUSAL_PROMISES, type CausalName, type PromiseRequest } from './request.js'
 import { type ParameterName, type Parameters, SINGLE_KEY } from './table.js'
 
 /** What is wrong with a promise that somebody asked for, in one sentence. */
@@ -33,9 +33,15 @@ export function buildRequest(
   given: Readonly<Record<string, string>>,
   keys: string,
 ): PromiseRequest {
+  if ((CAUSAL_PROMISES as readonly string[]).includes(promise)) {
+    const [parameter] = Object.keys(given)
+    if (parameter === undefined) return { name, causal: promise as CausalName, parameters: {}, keys }
+    throw new PromiseTrouble(`${promise} has no parameter ${JSON.stringify(parameter)}; it takes none`)
+  }
   if (!isSingleKey(promise)) {
+    const names = [...SINGLE_KEY_PROMISES, ...CAUSAL_PROMISES]
     throw new PromiseTrouble(
-      `there is no promise ${JSON.stringify(promise)}${didYouMean(promise, SINGLE_KEY_PROMISES)} (${SINGLE_KEY_PROMISES.join(', ')})`,
+      `there is no promise ${JSON.stringify(promise)}${didYouMean(promise, names)} (${names.join(', ')})`,
     )
   }
   const entry = SINGLE_KEY[promise]

@@ -3,10 +3,12 @@
  */
 import type { PairRule } from './promise.js'
 
-export interface PromiseRequest {
+export const CAUSAL_PROMISES = ['causal', 'causal-convergence'] as const
+export type CausalName = (typeof CAUSAL_PROMISES)[number]
+
+interface Asked {
   /** as the result calls it; unique among the requests */
   readonly name: string
-  readonly rule: PairRule
   /** as the result shows them */
   readonly parameters: Readonly<Record<string, string | number>>
   /** glob of the keys it is claimed for */
@@ -14,3 +16,17 @@ export interface PromiseRequest {
   /** where it stands in a promises file */
   readonly place?: { readonly file: string; readonly line: number }
 }
+
+/** A promise that is decided key by key. */
+export interface KeyPromiseRequest extends Asked {
+  readonly rule: PairRule
+  readonly causal?: undefined
+}
+
+/** A promise that is decided over all its keys at once. */
+export interface CausalPromiseRequest extends Asked {
+  readonly causal: CausalName
+  readonly rule?: undefined
+}
+
+export type PromiseRequest = KeyPromiseRequest | CausalPromiseRequest

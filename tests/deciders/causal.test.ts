@@ -1,9 +1,10 @@
 import fc from 'fast-check'
 import { describe, expect, it } from 'vitest'
-import { type CausalPromiseName, decideCausal } from '../../src/deciders/causal/decide.js'
+import { decideCausal } from '../../src/deciders/causal/decide.js'
 import { readHistory } from '../../src/history/read.js'
 import { textSource } from '../../src/history/source.js'
 import { indexByKey } from '../../src/order/key-history.js'
+import type { CausalName } from '../../src/promises/request.js'
 import { bruteForceCausal, type CausalOp } from '../oracles/causal-brute-force.js'
 import { runs } from '../oracles/decide.js'
 import { CAUSAL_CASES } from '../published/causal-cases.js'
@@ -25,7 +26,7 @@ function text(ops: readonly CausalOp[], header: Record<string, unknown> = {}): s
   return `${[JSON.stringify({ history: 1, ...header }), ...lines].join('\n')}\n`
 }
 
-async function decide(historyText: string, promise: CausalPromiseName) {
+async function decide(historyText: string, promise: CausalName) {
   const history = await readHistory([textSource('causal', historyText)])
   return decideCausal(history, indexByKey(history), promise, () => true)
 }

@@ -26,7 +26,7 @@ describe('a promises file', () => {
     ])
     expect(yaml[0].rule).toMatchObject({ withinNs: 2_000_000_000n, versions: 3 })
     expect(
-      parsePromisesFile('{"promises":[{"promise":"regular","keys":"a/*"}]}', 'p.json')[0].rule.name,
+      parsePromisesFile('{"promises":[{"promise":"regular","keys":"a/*"}]}', 'p.json')[0].rule?.name,
     ).toBe('regular')
   })
 

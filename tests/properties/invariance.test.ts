@@ -18,7 +18,7 @@ const PROMISES = SINGLE_KEY_PROMISES.map((name) =>
 async function verdicts(...texts: string[]): Promise<string[]> {
   const history = await readHistory(texts.map((text, i) => textSource(`f${i}`, text)))
   const key = gatherKey(history, indexByKey(history), 0, history.clockErrorNs)
-  return PROMISES.map((promise) => decideKey(key, history.values, parsePromise(promise).rule).verdict)
+  return PROMISES.map((promise) => decideKey(key, history.values, parsePromise(promise).rule!).verdict)
 }
 
 const someKey = fc.constantFrom<Family>('register', 'cas', 'counter').chain((family) => tinyKey(family, 8))

@@ -7,10 +7,9 @@
  */
 import type { History } from '../../history/columns.js'
 import type { KeyIndex } from '../../order/key-history.js'
+import type { CausalName } from '../../promises/request.js'
 import { type CausalHistory, collectCausal, INITIAL, READS_NOTHING } from './causal-history.js'
 import { type Causality, causalityOf, type Past } from './clocks.js'
-
-export type CausalPromiseName = 'causal' | 'causal-convergence'
 
 /** A bad pattern that was found. Nodes of `CausalOutcome.causal`. */
 export type CausalPattern =
@@ -41,7 +40,7 @@ export interface CausalOutcome {
 export function decideCausal(
   history: History,
   index: KeyIndex,
-  promise: CausalPromiseName,
+  promise: CausalName,
   isWanted: (keyId: number) => boolean,
 ): CausalOutcome {
   const causal = collectCausal(history, index, isWanted)
