@@ -13,7 +13,7 @@ export function relativeTimes(times: readonly bigint[]): string[] {
   const first = times.reduce((a, b) => (b < a ? b : a), times[0] ?? 0n)
   const offsets = times.map((time) => time - first)
   const span = offsets.reduce((a, b) => (b > a ? b : a), 0n)
-  const unit = UNITS.find(({ ns }) => span >= 10n * ns) ?? UNITS[3]
+  const unit = UNITS.find(({ ns }) => span >= ns) ?? UNITS[3]
   const distinct = new Set(offsets).size
   for (let decimals = unit.decimals === 0 ? 0 : 1; ; decimals++) {
     const texts = offsets.map((offset) => fixed(offset, unit.decimals, decimals))
