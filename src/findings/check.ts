@@ -28,7 +28,7 @@ import { findCounter } from './counter/find.js'
 import { type Counterexample, findCounterexample } from './counterexample.js'
 import { counterexamplePath, counterexampleText, isBrokenAgain } from './counterexample-text.js'
 import { findLostUpdateFindings } from './lost-updates.js'
-import { findingMargin, greater, keyMargin, type Margin } from './margin.js'
+import { findingMargin, greater, keyMargin, type Margin, ORDINARY_CLOCK_ERROR_NS } from './margin.js'
 import { marksOf } from './marks.js'
 import type { RawFinding } from './raw-finding.js'
 import { reasonOf } from './reasons.js'
@@ -36,6 +36,7 @@ import { findRegister } from './register/find.js'
 import type { ChainStep, Finding, FindingOperation, KeyResult, PromiseResult, Result } from './result.js'
 import { type NamedFinding, sortFindings } from './sorting.js'
 import { summarizeHistory } from './summary.js'
+import { duration } from './telling.js'
 import { upheld } from './upholds.js'
 
 export interface CheckRequest {
@@ -357,11 +358,27 @@ class Run {
       findings,
       findingCounts,
       undecided: this.#undecided,
-      warnings: this.#history.warnings.map((warning) => ({ ...warning })),
+      warnings: [...this.#history.warnings.map((warning) => ({ ...warning })), ...marginWarning(findings)],
       ...(this.#interrupted ? { interrupted: true as const } : {}),
       exit: this.#interrupted ? 130 : isBroken ? 1 : isUndecided ? 3 : 0,
     }
   }
+}
+
+/** Findings that an ordinary fleet's clocks could explain need a word. */
+function marginWarning(findings: readonly Finding[]): Result['warnings'] {
+  const few = findings.filter(
+    ({ marginNs }) =>
+      marginNs !== undefined && marginNs !== 'unbounded' && BigInt(marginNs) < ORDINARY_CLOCK_ERROR_NS,
+  ).length
+  if (few === 0) return []
+  const which = few === 1 ? '1 finding survives' : `${few} findings survive`
+  return [
+    {
+      code: 'small-margin',
+      text: `${which} less than ${duration(ORDINARY_CLOCK_ERROR_NS)} of clock error, which is common practice to reckon with between hosts on NTP: state what bounds your clocks (clockError, --clock-error), and the host where clients share a clock`,
+    },
+  ]
 }
 
 /** Lets timers, signals and the terminal have their turn. */

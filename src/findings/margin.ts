@@ -14,6 +14,12 @@ import type { Link, RawFinding } from './raw-finding.js'
 /** Nanoseconds, or no clock explains it. */
 export type Margin = bigint | 'unbounded'
 
+/**
+ * Clock error of an ordinary fleet synchronised by NTP, in nanoseconds: common practice reckons with some
+ * milliseconds.
+ */
+export const ORDINARY_CLOCK_ERROR_NS = 5_000_000n
+
 /** Beyond any difference of two times: no pair of two clocks counts any more. */
 const ANY_CLOCK = 2n ** 64n
 

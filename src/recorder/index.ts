@@ -8,6 +8,6 @@
  * await gate.read('berth/2', () => store.get('berth/2'))
  * recorder.close()
  */
-export { type CasAnswer, RecordingClient } from './client.js'
+export { type CasAnswer, type OperationOptions, RecordingClient, type WriteOptions } from './client.js'
 export { Recorder, type RecorderOptions } from './recorder.js'
 export type { RecordableValue } from './values.js'

@@ -3,10 +3,13 @@
  * batches; cut into further files by size.
  */
 import { closeSync, fsyncSync, openSync, writeSync } from 'node:fs'
+import { dirname } from 'node:path'
 
 export interface RecordFileOptions {
   /** the first file; the next ones are numbered before the ending: run.ndjson, run-2.ndjson, … Never overwrites. */
   readonly path: string
+  /** `path` exists already: an error, or the next number that is free */
+  readonly whenExists: 'fail' | 'next'
   /** first line of every file */
   readonly header: string
   /** `line`: the operating system has a line before its request goes out. `batch`: within the batch's bounds */
@@ -20,16 +23,25 @@ export interface RecordFileOptions {
   readonly batchBytes: number
 }
 
+/** Files with a batch to write when the process ends by itself or by an error. A kill leaves no time for it. */
+const unwritten = new Set<RecordFile>()
+process.on('exit', () => {
+  for (const file of unwritten) file.tryFlush()
+})
+
 export class RecordFile {
   readonly #options: RecordFileOptions
   readonly #paths: string[] = []
+  #number = 0
   #descriptor = -1
   #bytes = 0
   #batch: string[] = []
   #batchBytes = 0
   #timer: NodeJS.Timeout | undefined
   #closed = false
+  #failure: Error | undefined
 
+  /** Begins the first file. Throws when it cannot be made. */
   constructor(options: RecordFileOptions) {
     this.#options = options
     this.#begin()
@@ -40,25 +52,38 @@ export class RecordFile {
     return this.#paths
   }
 
-  /** Takes one line, without its end. In `line` mode it has been handed over when this returns. */
+  get isClosed(): boolean {
+    return this.#closed
+  }
+
+  /**
+   * Takes one line, without its end. In `line` mode it has been handed over when this returns. Throws when the
+   * recorder is closed or anything could not be written, now or before: a line after a lost one would hide the loss.
+   */
   write(line: string): void {
     if (this.#closed) throw new Error('this recorder is closed: open a new one, which takes new client names')
+    if (this.#failure) throw this.#failure
     const text = `${line}\n`
     if (this.#options.durable === 'line') {
       this.#put(text)
-      if (this.#options.sync) fsyncSync(this.#descriptor)
+      if (this.#options.sync) this.#attempt(() => fsyncSync(this.#descriptor))
       return
     }
     this.#batch.push(text)
     this.#batchBytes += text.length
     if (this.#batchBytes >= this.#options.batchBytes) this.flush()
-    else this.#timer ??= setTimeout(() => this.flush(), this.#options.batchMs)
+    else if (!this.#timer) {
+      unwritten.add(this)
+      this.#timer = setTimeout(() => this.tryFlush(), this.#options.batchMs)
+    }
   }
 
-  /** Hands over what a batch holds. */
+  /** Hands over what a batch holds. Throws when it cannot. */
   flush(): void {
     clearTimeout(this.#timer)
     this.#timer = undefined
+    unwritten.delete(this)
+    if (this.#failure) throw this.#failure
     if (this.#batch.length === 0) return
     const text = this.#batch.join('')
     this.#batch = []
@@ -66,32 +91,89 @@ export class RecordFile {
     this.#put(text)
   }
 
-  /** Flushes, waits for the disk and closes. */
+  /** Flushes where there is nobody to throw at: the next write throws instead. */
+  tryFlush(): void {
+    try {
+      this.flush()
+    } catch {
+      // Kept as the failure.
+    }
+  }
+
+  /** Flushes, waits for the disk and closes. Throws when anything could not be written. */
   close(): void {
     if (this.#closed) return
-    this.flush()
-    this.#closed = true
-    fsyncSync(this.#descriptor)
-    closeSync(this.#descriptor)
+    try {
+      this.flush()
+      this.#attempt(() => fsyncSync(this.#descriptor))
+    } finally {
+      this.#closed = true
+      closeSync(this.#descriptor)
+    }
   }
 
   #put(text: string): void {
-    if (this.#bytes >= this.#options.rotateBytes) {
-      closeSync(this.#descriptor)
-      this.#begin()
-    }
+    if (this.#bytes >= this.#options.rotateBytes) this.#attempt(() => this.#rotate())
+    this.#attempt(() => this.#append(text))
+  }
+
+  #append(text: string): void {
     const bytes = Buffer.from(text)
     for (let at = 0; at < bytes.length; ) at += writeSync(this.#descriptor, bytes, at)
     this.#bytes += bytes.length
   }
 
+  #rotate(): void {
+    // On disk before what follows it: no closing half may survive without its opening half.
+    fsyncSync(this.#descriptor)
+    const old = this.#descriptor
+    this.#begin()
+    closeSync(old)
+  }
+
+  /** A half written line is the last one: nothing may follow it. */
+  #attempt(job: () => void): void {
+    try {
+      job()
+    } catch (error) {
+      const path = this.#paths.at(-1)
+      const message = `cannot write the recording ${path}, which ends here: ${(error as Error).message}`
+      this.#failure = new Error(message, { cause: error })
+      throw this.#failure
+    }
+  }
+
   #begin(): void {
-    const { path, header } = this.#options
-    const number = this.#paths.length + 1
-    const name = number === 1 ? path : path.replace(/(\.ndjson)?$/, `-${number}$1`)
-    this.#descriptor = openSync(name, 'ax')
-    this.#paths.push(name)
+    const { path, header, sync, whenExists } = this.#options
+    for (;;) {
+      const number = ++this.#number
+      const name = number === 1 ? path : path.replace(/(\.ndjson)?$/, `-${number}$1`)
+      try {
+        this.#descriptor = openSync(name, 'ax')
+        this.#paths.push(name)
+        break
+      } catch (error) {
+        if ((error as NodeJS.ErrnoException).code !== 'EEXIST') throw error
+        if (number === 1 && whenExists === 'fail') {
+          throw new Error(
+            `${name} exists already and is not written over: name another file, or say whenExists: 'next'`,
+          )
+        }
+      }
+    }
     this.#bytes = 0
-    this.#put(`${header}\n`)
+    this.#append(`${header}\n`)
+    if (sync) syncFolder(dirname(path))
+  }
+}
+
+/** Makes the name of a new file outlast a power cut, where the system lets one open folders. */
+function syncFolder(path: string): void {
+  if (process.platform === 'win32') return
+  const folder = openSync(path, 'r')
+  try {
+    fsyncSync(folder)
+  } finally {
+    closeSync(folder)
   }
 }

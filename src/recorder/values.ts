@@ -14,19 +14,30 @@ export type RecordableValue =
 
 /** The JSON text of a value. Throws TypeError for what JSON or a double cannot hold exactly. */
 export function valueText(value: RecordableValue): string {
+  if (typeof value === 'string') return JSON.stringify(value)
   if (typeof value === 'bigint') return value.toString()
   if (typeof value === 'number') return numberText(value)
-  if (value === null || typeof value === 'boolean' || typeof value === 'string') return JSON.stringify(value)
-  if (Array.isArray(value)) return `[${value.map(valueText).join(',')}]`
-  if (typeof value === 'object') {
+  if (value === null || typeof value === 'boolean') return String(value)
+  if (Array.isArray(value)) return `[${Array.from(value, valueText).join(',')}]`
+  if (isPlainObject(value)) {
     const members = Object.entries(value).map(
       ([name, member]) => `${JSON.stringify(name)}:${valueText(member)}`,
     )
     return `{${members.join(',')}}`
   }
   throw new TypeError(
-    `found ${typeof value} as a value to record, expected JSON or a bigint (null for absence)`,
+    `found ${named(value)} as a value to record, expected JSON or a bigint (null for absence); ` +
+      'record the text or the number that it stands for',
   )
+}
+
+/** The digits of a whole number. Throws TypeError for anything else; `what` says what it is. */
+export function wholeNumberText(what: string, value: unknown): string {
+  if (typeof value === 'bigint') return value.toString()
+  if (typeof value === 'number' && Number.isInteger(value)) return numberText(value)
+  const advice =
+    typeof value === 'string' ? '; where the client of the store returns text, pass BigInt(text)' : ''
+  throw new TypeError(`found ${shown(value)} as ${what}, expected a whole number or a bigint${advice}`)
 }
 
 function numberText(value: number): string {
@@ -38,4 +49,23 @@ function numberText(value: number): string {
     )
   }
   return JSON.stringify(value)
+}
+
+/** Dates, maps, buffers and the like have members that are not what they hold. */
+function isPlainObject(value: unknown): value is { readonly [name: string]: RecordableValue } {
+  if (typeof value !== 'object' || value === null) return false
+  const prototype = Object.getPrototypeOf(value)
+  // An object of another realm (a test runner's sandbox) has that realm's Object.prototype.
+  return prototype === null || Object.getPrototypeOf(prototype) === null
+}
+
+function named(value: unknown): string {
+  if (typeof value !== 'object' || value === null) return typeof value
+  return `an instance of ${value.constructor?.name ?? 'a class'}`
+}
+
+/** A wrong value in a message, cut short. */
+export function shown(value: unknown): string {
+  if (typeof value === 'string') return JSON.stringify(value.length > 40 ? `${value.slice(0, 40)}…` : value)
+  return typeof value === 'object' && value !== null ? named(value) : String(value)
 }

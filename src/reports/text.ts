@@ -5,6 +5,7 @@ import { FINDING_KINDS } from '../findings/kinds.js'
 import type { PromiseResult, Result } from '../findings/result.js'
 import { duration } from '../findings/telling.js'
 import { type CauseGroup, groupFindings } from '../findings/telling-order.js'
+import { tellMarks, tellUpheld } from './broken-keys.js'
 import { tellGroup } from './finding-text.js'
 import { Page } from './page.js'
 import { counted, cut, thousands } from './printable.js'
@@ -37,6 +38,8 @@ export function textReport(result: Result, options: TextOptions): string {
   }
   for (const promise of result.promises) tellVerdict(page, promise)
   tellEveryKey(page, result)
+  tellUpheld(page, result)
+  tellMarks(page, result)
   tellFindings(page, result, options)
   tellUndecided(page, result)
   page.blank()

@@ -135,3 +135,15 @@ describe('what a broken key still upholds', () => {
     expect(result.keys[0].upholds).not.toContain('linearizable')
   })
 })
+
+describe('small margins', () => {
+  it('are warned of, and only those', async () => {
+    const warnings = async (text: string) => (await checkText(text)).result.warnings.map(({ code }) => code)
+    const story = (gap: number, host: string): string =>
+      `{"client":"A","op":"write","key":"k","value":1,"start":1,"end":2${host}}\n{"client":"C","op":"read","key":"k","value":null,"start":${gap},"end":${gap + 1}${host}}\n`
+    expect(await warnings(story(1_000_000, ''))).toEqual(['small-margin'])
+    expect(await warnings(story(20_000_000, ''))).toEqual([])
+    // One clock stamped both: nothing to explain.
+    expect(await warnings(story(1_000_000, ',"host":"h"'))).toEqual([])
+  })
+})
