@@ -11,9 +11,8 @@ process.once('SIGINT', () => {
   controller.abort()
   process.once('SIGINT', () => process.exit(130))
 })
-// A reader that has had enough closes the pipe: end quietly.
+// A reader that has had enough closes the pipe: go on quietly, so that the exit status still tells the verdict.
 process.stdout.on('error', (error: NodeJS.ErrnoException) => {
-  if (error.code === 'EPIPE') process.exit()
-  throw error
+  if (error.code !== 'EPIPE') throw error
 })
 process.exitCode = await run(process.argv.slice(2), processTerminal(controller.signal))

@@ -35,7 +35,8 @@ export function write(stream: NodeJS.WritableStream, text: string): Promise<void
   return new Promise((resolve, reject) => {
     stream.write(text, (error) => {
       // A reader that has had enough closes the pipe: that is no failure.
-      if (error && (error as NodeJS.ErrnoException).code !== 'EPIPE') reject(error)
+      const { code } = (error ?? {}) as NodeJS.ErrnoException
+      if (error && code !== 'EPIPE' && code !== 'ERR_STREAM_DESTROYED') reject(error)
       else resolve()
     })
   })
