@@ -25,7 +25,7 @@ import type { CausalPromiseRequest, KeyPromiseRequest, PromiseRequest } from '..
 import { VERSION } from '../version.js'
 import { findCausal } from './causal.js'
 import { findCounter } from './counter/find.js'
-import { type Counterexample, findCounterexample } from './counterexample.js'
+import { findCounterexample } from './counterexample.js'
 import { counterexamplePath, counterexampleText, isBrokenAgain } from './counterexample-text.js'
 import { findLostUpdateFindings } from './lost-updates.js'
 import { findingMargin, greater, keyMargin, type Margin, ORDINARY_CLOCK_ERROR_NS } from './margin.js'
@@ -37,6 +37,7 @@ import type { ChainStep, Finding, FindingOperation, KeyResult, PromiseResult, Re
 import { type NamedFinding, sortFindings } from './sorting.js'
 import { summarizeHistory } from './summary.js'
 import { duration } from './telling.js'
+import { groupFindings } from './telling-order.js'
 import { upheld } from './upholds.js'
 
 export interface CheckRequest {
@@ -47,7 +48,7 @@ export interface CheckRequest {
   readonly keys?: readonly string[]
   /** list all keys in the result, not only those broken or undecided */
   readonly everyKey?: boolean
-  /** make counterexamples for so many findings, the first in order; default none */
+  /** make counterexamples for the findings in so many paragraphs of a report, the worst first; default none */
   readonly counterexamples?: number
   /** told now and then how many of the keys are decided */
   onProgress?(done: number, total: number): void
@@ -88,37 +89,32 @@ export async function check(
 
   const records = new Records(history, sources)
   for (const { finding } of named) for (const { operation } of finding.exhibits) records.want(operation)
-  const examples = new Map<NamedFinding, Counterexample>()
-  for (const each of named.slice(0, request.counterexamples ?? 0)) {
-    const { rule } = request.promises.find(({ name }) => name === each.promise)!
-    if (!rule) continue
-    const counting = countPairs(gatherKey(history, index, each.finding.keyId, clockErrorNs), rule)
-    const example = findCounterexample(counting, history.values, each.finding)
-    if (!example) continue
-    examples.set(each, example)
-    for (const operation of example.operations) records.want(operation)
-  }
   await records.fetch()
+  const findings = named.map((each, i) => tell(history, records, each, i + 1))
 
-  const findings: Finding[] = []
   const counterexamples: CounterexampleFile[] = []
-  for (const each of named) {
-    const id = findings.length + 1
-    const finding = tell(history, records, each, id)
-    const example = examples.get(each)
-    if (example) {
-      const { rule } = request.promises.find(({ name }) => name === each.promise)!
-      const text = counterexampleText(history, records, each.finding.keyId, clockErrorNs, example)
-      if (rule && (await isBrokenAgain(text, rule))) {
-        const path = counterexamplePath(id, finding.kind, history.keys.name(each.finding.keyId))
-        counterexamples.push({ path, text })
-        findings.push({ ...finding, counterexample: path })
-        continue
-      }
-    }
-    findings.push(finding)
+  for (const id of toldFirst(findings, request.counterexamples ?? 0)) {
+    const { promise, finding } = named[id - 1]
+    const { rule } = request.promises.find(({ name }) => name === promise)!
+    if (!rule) continue
+    const counting = countPairs(gatherKey(history, index, finding.keyId, clockErrorNs), rule)
+    const example = findCounterexample(counting, history.values, finding)
+    if (!example) continue
+    for (const operation of example.operations) records.want(operation)
+    await records.fetch()
+    const text = counterexampleText(history, records, finding.keyId, clockErrorNs, example)
+    if (!(await isBrokenAgain(text, rule))) continue
+    const path = counterexamplePath(id, finding.kind, history.keys.name(finding.keyId))
+    counterexamples.push({ path, text })
+    findings[id - 1] = { ...findings[id - 1], counterexample: path }
   }
   return { result: run.result(findings), counterexamples }
+}
+
+/** Ids of the findings in the first `limit` paragraphs of a report, in rising order: those that people are shown. */
+function toldFirst(findings: readonly Finding[], limit: number): number[] {
+  const paragraphs = groupFindings(findings).flat().slice(0, limit)
+  return paragraphs.flatMap((paragraph) => paragraph.map(({ id }) => id)).sort((a, b) => a - b)
 }
 
 /** The records of operations, as they stand in the input. */
@@ -138,7 +134,8 @@ export class Records {
   }
 
   async fetch(): Promise<void> {
-    const places = [...this.#wanted.values()]
+    const places = [...this.#wanted.values()].filter(({ file, line }) => !this.#texts.has(`${file}:${line}`))
+    if (places.length === 0) return
     const texts = await fetchLines(this.#sources, places)
     for (const [i, { file, line }] of places.entries()) this.#texts.set(`${file}:${line}`, texts[i])
   }

@@ -176,6 +176,17 @@ describe('check options', () => {
     }
   })
 
+  it('--out writes a counterexample for each finding that the text shows', async () => {
+    const { out } = await misread(['check', HARBOUR, '--limit', '4', '--out', join(folder, 'four')])
+    const shown = [...out.matchAll(/^\[(\d+)\]/gm)].map(([, id]) => id.padStart(4, '0')).sort()
+    expect(shown).toHaveLength(4)
+    expect(
+      readdirSync(join(folder, 'four', 'counterexamples'))
+        .map((name) => name.slice(0, 4))
+        .sort(),
+    ).toEqual(shown)
+  })
+
   it('--out does not write over what is there without --force', async () => {
     const out = join(folder, 'kept')
     await misread(['check', HARBOUR, '--out', out])
