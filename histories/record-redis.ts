@@ -3,6 +3,9 @@
  *
  *   npx tsx histories/record-redis.ts --reads replica --operations 20000 --out redis-replica.ndjson
  *
+ * --reads primary: everything through the primary. replica: three of four clients read from the replica, each by its
+ * own connection to it. either: these clients' reads go to the one or the other by chance.
+ *
  * Needs redis-server (Debian's package). Everything runs on loopback in a temporary folder and is ended and
  * removed at the end, also on errors and interrupts. Faults are injected into servers started here only.
  */
@@ -26,8 +29,8 @@ const { values: options } = parseArgs({
   },
 })
 if (!options.out) throw new Error('--out FILE is missing: where to write the recording')
-if (options.reads !== 'replica' && options.reads !== 'primary')
-  throw new Error('--reads takes replica or primary')
+const reads = ['primary', 'replica', 'either'].find((mode) => mode === options.reads)
+if (!reads) throw new Error('--reads takes primary, replica or either')
 
 const operations = wholeNumber('operations', options.operations)
 const clients = wholeNumber('clients', options.clients)
@@ -119,7 +122,8 @@ async function caughtUp(primary: Redis, replica: Redis): Promise<void> {
   throw new Error('the replica does not catch up')
 }
 
-async function main(out: string, fromReplica: boolean): Promise<void> {
+async function main(out: string, mode: string): Promise<void> {
+  const fromReplica = mode !== 'primary'
   const first = await startServer([])
   const primary = connect(first.port)
   await primary.ping()
@@ -129,7 +133,7 @@ async function main(out: string, fromReplica: boolean): Promise<void> {
 
   const recorder = new Recorder({
     path: out,
-    title: `Redis primary and replica, reads from the ${fromReplica ? 'replica' : 'primary'}`,
+    title: `Redis primary and replica, reads from ${mode === 'either' ? 'either' : `the ${mode}`}`,
     host: 'recorder-1',
     // Redis answers a command with an error reply only when it did not carry it out.
     refusedWhen: (error) => error instanceof Error && error.name === 'ReplyError',
@@ -143,23 +147,24 @@ async function main(out: string, fromReplica: boolean): Promise<void> {
   const asCount = (text: string | null): bigint | null => (text === null ? null : BigInt(text))
   const pick = <T>(items: readonly T[]): T => items[Math.floor(Math.random() * items.length)]
 
-  async function drive(client: RecordingClient, writer: Redis, reader: Redis): Promise<void> {
+  async function drive(client: RecordingClient, writer: Redis, others: Redis | undefined): Promise<void> {
+    const reader = (): Redis => (others && !(mode === 'either' && Math.random() < 0.5) ? others : writer)
     while (left-- > 0) {
       // Who reads from the replica takes its time, so that some requests begin while the replica stands still.
-      if (reader !== writer) await sleep(Math.random() * 12)
-      const isRead = Math.random() < 0.5
-      if (counters.length > 0 && Math.random() < 0.25) {
-        const key = pick(counters)
-        if (isRead) await client.read(key, async () => asCount(await reader.get(key)))
-        else await client.increment(key, 1, async () => void (await writer.incrby(key, 1)))
-      } else {
-        const key = pick(registers)
-        if (isRead) await client.read(key, () => reader.get(key))
-        else {
-          const value = recorder.uniqueValue('vessel')
-          await client.write(key, value, () => writer.set(key, value))
-        }
+      if (others) await sleep(Math.random() * 12)
+      const isCounter = counters.length > 0 && Math.random() < 0.25
+      const key = pick(isCounter ? counters : registers)
+      const isWrite = Math.random() < 0.45
+      if (isWrite && isCounter) await client.increment(key, 1, async () => void (await writer.incrby(key, 1)))
+      else if (isWrite) {
+        const value = recorder.uniqueValue('vessel')
+        await client.write(key, value, () => writer.set(key, value))
       }
+      // Some read back at once what they have just written.
+      if (isWrite && (Math.random() < 0.7 || left-- <= 0)) continue
+      const from = reader()
+      if (isCounter) await client.read(key, async () => asCount(await from.get(key)))
+      else await client.read(key, () => from.get(key))
     }
   }
 
@@ -179,9 +184,9 @@ async function main(out: string, fromReplica: boolean): Promise<void> {
   await Promise.all(
     Array.from({ length: clients }, (_, i) => {
       const writer = connect(first.port)
-      // Three of four clients read where the mode says, the others where they write.
-      const reader = fromReplica && i % 4 !== 0 ? connect(second.port) : writer
-      return drive(recorder.client(`gate-${i + 1}`), writer, reader)
+      // Three of four clients read where the mode says, the others from the primary.
+      const others = fromReplica && i % 4 !== 0 ? connect(second.port) : undefined
+      return drive(recorder.client(`gate-${i + 1}`), writer, others)
     }),
   )
   running = false
@@ -196,7 +201,7 @@ async function main(out: string, fromReplica: boolean): Promise<void> {
 }
 
 try {
-  await main(options.out, options.reads === 'replica')
+  await main(options.out, reads)
   process.exit(0)
 } catch (error) {
   console.error(error)

@@ -48,7 +48,7 @@ export interface Versions {
  */
 export function findVersions(key: KeyHistory, resolved?: Int32Array): Versions {
   const { n } = key
-  const initialValue = key.initial === NO_VALUE ? unknownInitial(key) : key.initial
+  let initialValue = key.initial === NO_VALUE ? unknownInitial(key) : key.initial
   const writers = findWriters(key)
 
   // What each reader saw, as a local write index, -1 for the initial value, or a negative code below -1.
@@ -79,6 +79,11 @@ export function findVersions(key: KeyHistory, resolved?: Int32Array): Versions {
       tookEffect[w] = 1
       if (key.kind[w] !== CAS || key.acked[w] === 1) return
       saw[w] = look(w, key.extra[w])
+      if (saw[w] === UNWRITTEN && initialValue === NO_VALUE) {
+        // No read tells the unknown initial value, but a cas that took effect must have found it.
+        initialValue = key.extra[w]
+        saw[w] = INITIAL
+      }
       if (saw[w] === AMBIGUOUS && ambiguous < 0) ambiguous = w
       if ((saw[w] === UNWRITTEN || saw[w] === OFFERED_ONLY) && impossibleCas < 0) impossibleCas = w
       w = saw[w]
