@@ -12,16 +12,24 @@ export type RecordableValue =
   | readonly RecordableValue[]
   | { readonly [name: string]: RecordableValue }
 
+/** Readers take records of at most 512 levels, of which the record itself is one. */
+const DEPTH_LIMIT = 500
+
 /** The JSON text of a value. Throws TypeError for what JSON or a double cannot hold exactly. */
-export function valueText(value: RecordableValue): string {
+export function valueText(value: RecordableValue, depth = 0): string {
   if (typeof value === 'string') return JSON.stringify(value)
   if (typeof value === 'bigint') return value.toString()
   if (typeof value === 'number') return numberText(value)
   if (value === null || typeof value === 'boolean') return String(value)
-  if (Array.isArray(value)) return `[${Array.from(value, valueText).join(',')}]`
+  if (depth === DEPTH_LIMIT)
+    throw new TypeError(
+      `found a value to record with over ${DEPTH_LIMIT} levels of nesting, or one within itself`,
+    )
+  if (Array.isArray(value))
+    return `[${Array.from(value, (member) => valueText(member, depth + 1)).join(',')}]`
   if (isPlainObject(value)) {
     const members = Object.entries(value).map(
-      ([name, member]) => `${JSON.stringify(name)}:${valueText(member)}`,
+      ([name, member]) => `${JSON.stringify(name)}:${valueText(member, depth + 1)}`,
     )
     return `{${members.join(',')}}`
   }

@@ -101,7 +101,7 @@ describe('a recorder', () => {
       [{ count: 2 ** 60 }, 'bigint'],
       [{ gone: undefined }, 'undefined'],
       [holes, 'undefined'],
-      [cyclic, 'call stack'],
+      [cyclic, 'within itself'],
       ['x'.repeat(17 * 2 ** 20), '16 MiB'],
     ] as [RecordableValue, string][]) {
       await expect(gate.write('k', value, send), String(advice)).rejects.toThrow(advice)
@@ -114,6 +114,16 @@ describe('a recorder', () => {
     await gate.write('k', 'after all', send)
     recorder.close()
     expect((await historyOf(recorder.paths)).count).toBe(1)
+  })
+
+  it('records nothing nested deeper than readers take', async () => {
+    const recorder = new Recorder({ path: path() })
+    let deepest: RecordableValue = 1
+    for (let i = 0; i < 500; i++) deepest = i % 2 === 0 ? [deepest] : { in: deepest }
+    await recorder.client('gate-1').read('k', async () => deepest)
+    await expect(recorder.client('gate-2').read('k', async () => [deepest])).rejects.toThrow('500 levels')
+    recorder.close()
+    expect((await historyOf(recorder.paths)).count).toBe(2)
   })
 
   it('takes an answer that it cannot record for unsure, and says what to do', async () => {
