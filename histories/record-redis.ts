@@ -162,9 +162,12 @@ async function main(out: string, mode: string): Promise<void> {
       }
       // Some read back at once what they have just written.
       if (isWrite && (Math.random() < 0.7 || left-- <= 0)) continue
-      const from = reader()
-      if (isCounter) await client.read(key, async () => asCount(await from.get(key)))
-      else await client.read(key, () => from.get(key))
+      // Where reads go to either server, some look twice.
+      for (let looks = mode === 'either' && Math.random() < 0.5 ? 2 : 1; looks > 0; looks--) {
+        const from = reader()
+        if (isCounter) await client.read(key, async () => asCount(await from.get(key)))
+        else await client.read(key, () => from.get(key))
+      }
     }
   }
 
