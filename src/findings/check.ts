@@ -24,6 +24,7 @@ import { keyGlob } from '../promises/glob.js'
 import type { CausalPromiseRequest, KeyPromiseRequest, PromiseRequest } from '../promises/request.js'
 import { VERSION } from '../version.js'
 import { findCausal } from './causal.js'
+import { findCausalCounterexample } from './causal-counterexample.js'
 import { findCounter } from './counter/find.js'
 import { findCounterexample } from './counterexample.js'
 import { counterexamplePath, counterexampleText, isBrokenAgain } from './counterexample-text.js'
@@ -95,16 +96,30 @@ export async function check(
   const counterexamples: CounterexampleFile[] = []
   for (const id of toldFirst(findings, request.counterexamples ?? 0)) {
     const { promise, finding } = named[id - 1]
-    const { rule } = request.promises.find(({ name }) => name === promise)!
-    if (!rule) continue
-    const counting = countPairs(gatherKey(history, index, finding.keyId, clockErrorNs), rule)
-    const example = findCounterexample(counting, history.values, finding)
+    const asked = request.promises.find(({ name }) => name === promise)!
+    const example = asked.causal
+      ? findCausalCounterexample(history, asked.causal, finding)
+      : findCounterexample(
+          countPairs(gatherKey(history, index, finding.keyId, clockErrorNs), asked.rule),
+          history.values,
+          finding,
+        )
     if (!example) continue
     for (const operation of example.operations) records.want(operation)
     await records.fetch()
-    const text = counterexampleText(history, records, finding.keyId, clockErrorNs, example)
-    if (!(await isBrokenAgain(text, rule))) continue
-    const path = counterexamplePath(id, finding.kind, history.keys.name(finding.keyId))
+    const text = counterexampleText(
+      history,
+      records,
+      finding.keyIds ?? [finding.keyId],
+      clockErrorNs,
+      example,
+    )
+    if (!(await isBrokenAgain(text, asked))) continue
+    const path = counterexamplePath(
+      id,
+      finding.kind,
+      (finding.keyIds ?? [finding.keyId]).map((keyId) => history.keys.name(keyId)).join(' '),
+    )
     counterexamples.push({ path, text })
     findings[id - 1] = { ...findings[id - 1], counterexample: path }
   }

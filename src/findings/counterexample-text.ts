@@ -1,6 +1,7 @@
 /**
  * Counterexamples as histories of their own: a header, then operations taken unchanged from the input.
  */
+import { decideCausal } from '../deciders/causal/decide.js'
 import { decideKey } from '../deciders/decide-key.js'
 import { fileOf, type History } from '../history/columns.js'
 import type { LinePlace } from '../history/lines.js'
@@ -8,7 +9,7 @@ import { readHistory } from '../history/read.js'
 import { rewriteTimes } from '../history/rewrite-times.js'
 import { textSource } from '../history/source.js'
 import { gatherKey, indexByKey } from '../order/key-history.js'
-import type { PairRule } from '../promises/promise.js'
+import type { PromiseRequest } from '../promises/request.js'
 import type { Counterexample } from './counterexample.js'
 
 /** Where the records of operations come from. */
@@ -23,7 +24,7 @@ interface RecordSource {
 export function counterexampleText(
   history: History,
   records: RecordSource,
-  keyId: number,
+  keyIds: readonly number[],
   clockErrorNs: bigint,
   { operations, initialCount }: Counterexample,
 ): string {
@@ -38,7 +39,7 @@ export function counterexampleText(
   const texts = lines.map(({ place, text }) =>
     units.size === 1 ? text : rewriteTimes(text, history.files[place.file].unitNs),
   )
-  return `${[header(history, keyId, clockErrorNs, initialCount, unitNs), ...texts].join('\n')}\n`
+  return `${[header(history, keyIds, clockErrorNs, initialCount, unitNs), ...texts].join('\n')}\n`
 }
 
 /** What a dump held, as the record of a read, in nanoseconds. */
@@ -52,7 +53,7 @@ function dumpedRecord(history: History, i: number): string {
 
 function header(
   history: History,
-  keyId: number,
+  keyIds: readonly number[],
   clockErrorNs: bigint,
   initialCount: bigint | undefined,
   unitNs: bigint,
@@ -61,11 +62,13 @@ function header(
   if (history.title !== undefined) members.push(`"title":${JSON.stringify(history.title)}`)
   if (unitNs !== 1n) members.push(`"unit":"${UNIT_NAMES.get(unitNs)}"`)
   if (clockErrorNs > 0n) members.push(`"clockError":${inUnit(clockErrorNs, unitNs)}`)
-  const initial = history.initial.get(keyId)
-  const name = JSON.stringify(history.keys.name(keyId))
-  if (initialCount !== undefined) members.push(`"initial":{${name}:${initialCount}}`)
-  else if (initial !== undefined) members.push(`"initial":{${name}:${history.values.text(initial)}}`)
-  else if (history.initialUnknown) members.push('"initialUnknown":true')
+  const initial = keyIds.flatMap((keyId) => {
+    const value = history.initial.get(keyId)
+    const text = initialCount?.toString() ?? (value === undefined ? undefined : history.values.text(value))
+    return text === undefined ? [] : [`${JSON.stringify(history.keys.name(keyId))}:${text}`]
+  })
+  if (initial.length > 0) members.push(`"initial":{${initial.join(',')}}`)
+  if (history.initialUnknown && initial.length < keyIds.length) members.push('"initialUnknown":true')
   return `{${members.join(',')}}`
 }
 
@@ -85,9 +88,10 @@ function inUnit(ns: bigint, unitNs: bigint): string {
 }
 
 /** Reads the text as anybody would and decides it: the last word before it is shown. */
-export async function isBrokenAgain(text: string, rule: PairRule): Promise<boolean> {
+export async function isBrokenAgain(text: string, { rule, causal }: PromiseRequest): Promise<boolean> {
   const history = await readHistory([textSource('counterexample', text)])
   const index = indexByKey(history)
+  if (causal) return decideCausal(history, index, causal, () => true).verdict === 'broken'
   return (
     decideKey(gatherKey(history, index, 0, history.clockErrorNs), history.values, rule).verdict === 'broken'
   )

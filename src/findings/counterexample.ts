@@ -16,6 +16,7 @@ import { precedes } from '../order/precedence.js'
 import { isRead } from '../order/roles.js'
 import { findVersions } from '../order/versions.js'
 import type { RawFinding } from './raw-finding.js'
+import { type Dependents, shrink } from './shrink.js'
 import { WithExtraValue } from './with-extra-value.js'
 
 export interface Counterexample {
@@ -37,11 +38,8 @@ export function findCounterexample(
   const evidence = finding.exhibits.map(({ operation }) => operation)
   const start = judge.isBroken(evidence) ? evidence : everything(counting.key)
   if (!judge.isBroken(start)) return undefined
-  return { operations: shrink(start, judge, dependents), initialCount: undefined }
+  return { operations: shrink(start, (rest) => judge.isBroken(rest), dependents), initialCount: undefined }
 }
-
-/** Which other operations must go when one goes. */
-type Dependents = (removed: number, among: ReadonlySet<number>) => Iterable<number>
 
 function counterCounterexample(judge: Judge, finding: RawFinding): Counterexample | undefined {
   const { key } = judge
@@ -65,7 +63,12 @@ function counterCounterexample(judge: Judge, finding: RawFinding): Counterexampl
     judge.start(initialCount)
     if (!judge.isBroken(operations)) continue
     return {
-      operations: shrink(operations, judge, counterDependents(judge, starting), starting),
+      operations: shrink(
+        operations,
+        (rest) => judge.isBroken(rest),
+        counterDependents(judge, starting),
+        starting,
+      ),
       initialCount,
     }
   }
@@ -125,37 +128,6 @@ class Judge {
     }
     return -1
   }
-}
-
-/** Takes away what it can, in halves, quarters and so on, then one by one until nothing goes any more. */
-function shrink(
-  operations: readonly number[],
-  judge: Judge,
-  dependents: Dependents,
-  starting = -1,
-): number[] {
-  let kept = new Set(operations)
-  const attempt = (removed: readonly number[]): boolean => {
-    const rest = new Set(kept)
-    const waiting = removed.filter((i) => i !== starting && rest.delete(i))
-    if (waiting.length === 0) return false
-    for (let i = waiting.pop(); i !== undefined; i = waiting.pop()) {
-      for (const other of dependents(i, rest))
-        if (other !== starting && rest.delete(other)) waiting.push(other)
-    }
-    if (rest.size === 0 || !judge.isBroken(rest)) return false
-    kept = rest
-    return true
-  }
-  for (let size = kept.size >> 1; size > 1; size >>= 1) {
-    const all = [...kept]
-    for (let at = all.length; at > 0; at -= size) attempt(all.slice(Math.max(0, at - size), at))
-  }
-  for (let again = true; again; ) {
-    again = false
-    for (const i of [...kept].reverse()) if (kept.has(i) && attempt([i])) again = true
-  }
-  return [...kept].sort((a, b) => a - b)
 }
 
 /** With a write go its reads and the cas that found it; a torn or refused value goes with any of its sources. */

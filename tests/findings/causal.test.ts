@@ -53,8 +53,9 @@ describe('findings of causal', () => {
     [['A write x 1', 'A read x 2', 'B write x 2', 'B read x 1'], 'causal', [], ''],
     [['A write x 1', 'B read x 7'], 'causal', ['unwritten-value'], 'nobody in this recording'],
   ])('%j under %s', async (steps, promise, kinds, words) => {
-    const { result } = await checkText(text(...steps), promise)
+    const { result, counterexamples } = await checkText(text(...steps), promise)
     expect(result.findings.map(({ kind }) => kind)).toEqual(kinds)
+    expect(counterexamples).toHaveLength(kinds.length)
     if (kinds.length > 0) expect(result.findings[0].summary).toContain(words)
     expect(result.keys).toEqual([])
   })
@@ -67,5 +68,27 @@ describe('findings of causal', () => {
     expect(none.promises[0].verdict).toBe('undecided')
     expect(none.undecided[0]).toMatchObject({ promise: 'causal' })
     expect(none.exit).toBe(3)
+  })
+
+  it('have counterexamples of which nothing can be spared', async () => {
+    const noise = ['A write z 9', 'C read z 9', 'C write x 8']
+    const steps = ['A write x 1', 'A write x 2', 'A write y 3', ...noise, 'B read y 3', 'B read x 1']
+    const { counterexamples } = await checkText(text(...steps), 'causal')
+    const [header, ...lines] = counterexamples[0].text.trimEnd().split('\n')
+    expect(header).toBe('{"history":1}')
+    // 1, overwritten by 2, on which 3 depends, which B had read.
+    expect(lines).toHaveLength(5)
+    for (const gone of lines) {
+      const { op, key, value } = JSON.parse(gone)
+      const rest = lines.filter((line) => {
+        const record = JSON.parse(line)
+        return (
+          line !== gone &&
+          !(op === 'write' && record.op === 'read' && record.key === key && record.value === value)
+        )
+      })
+      const { result } = await checkText(`${[header, ...rest].join('\n')}\n`, 'causal')
+      expect(result.promises[0].verdict, gone).toBe('holds')
+    }
   })
 })
