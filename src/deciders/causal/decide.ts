@@ -49,7 +49,11 @@ export function decideCausal(
   const patterns: CausalPattern[] = []
   if (causality.stuck.length > 0)
     patterns.push({ name: 'CyclicCO', cycle: findCycle(causal, causality.stuck) })
-  const writers = new Writers(causal)
+  const writers = new Writers(causal, history.keys.size)
+  const rank = new Int32Array(causal.count)
+  causality.order.forEach((node, r) => {
+    rank[node] = r
+  })
   const conflicts: { before: number; after: number; read: number }[] = []
   let untested = true
 
@@ -57,16 +61,17 @@ export function decideCausal(
     const source = causal.from[read]
     if (source === READS_NOTHING) return
     let blame = -1
-    for (const write of writers.lastOf(causal.key[read], past)) {
-      if (write === read) continue
+    writers.lastOf(causal.key[read], past, (write) => {
+      if (write === read) return
       untested = false
-      if (write === source) continue
-      if (source === INITIAL || causality.isBefore(source, write)) {
+      if (write === source) return
+      // What comes after another in causality comes after it in the order, too.
+      if (source === INITIAL || (rank[write] > rank[source] && causality.isBefore(source, write))) {
         if (blame < 0) blame = write
       } else if (promise === 'causal-convergence' && !causality.isBefore(write, source)) {
         conflicts.push({ before: write, after: source, read })
       }
-    }
+    })
     if (blame < 0) return
     patterns.push({ name: source === INITIAL ? 'WriteCOInitRead' : 'WriteCORead', read, write: blame })
   })
@@ -78,44 +83,62 @@ export function decideCausal(
   return { verdict: isBroken ? 'broken' : 'holds', causal, patterns, untested: untested && !isBroken }
 }
 
-/** For each key the acked writes of each client in session order, and the unsure ones. */
+/**
+ * For each key the acked writes of each client in session order, flat: the groups of key k are
+ * `groupOffset[k] … groupOffset[k + 1]`, the writes of group g `nodes[nodeOffset[g] … nodeOffset[g + 1])`; and the
+ * unsure writes of a key.
+ */
 class Writers {
   readonly #causal: CausalHistory
-  readonly #acked = new Map<number, Map<number, number[]>>()
+  readonly #groupOffset: Int32Array
+  readonly #nodeOffset: Int32Array
+  readonly #nodes: Int32Array
   readonly #unsure = new Map<number, number[]>()
 
-  constructor(causal: CausalHistory) {
+  constructor(causal: CausalHistory, keys: number) {
     this.#causal = causal
-    for (let node = 0; node < causal.count; node++) {
-      if (!causal.writes[node]) continue
-      const key = causal.key[node]
-      if (causal.acked[node] === 0) {
-        this.#unsure.set(key, [...(this.#unsure.get(key) ?? []), node])
-        continue
-      }
-      const clients = this.#acked.get(key) ?? new Map<number, number[]>()
-      this.#acked.set(key, clients)
-      const nodes = clients.get(causal.client[node])
-      if (nodes) nodes.push(node)
-      else clients.set(causal.client[node], [node])
+    const { acked, client, count, key, writes } = causal
+    // Nodes stand by client, so a stable sort by key leaves each key's writes in groups of one client.
+    const offset = new Int32Array(keys + 1)
+    for (let node = 0; node < count; node++) if (writes[node] && acked[node]) offset[key[node] + 1]++
+    for (let k = 0; k < keys; k++) offset[k + 1] += offset[k]
+    const next = offset.slice(0, keys)
+    this.#nodes = new Int32Array(offset[keys])
+    for (let node = 0; node < count; node++) {
+      if (!writes[node]) continue
+      if (acked[node]) this.#nodes[next[key[node]]++] = node
+      else this.#unsure.set(key[node], [...(this.#unsure.get(key[node]) ?? []), node])
     }
+    this.#groupOffset = new Int32Array(keys + 1)
+    const starts: number[] = []
+    for (let k = 0; k < keys; k++) {
+      for (let at = offset[k]; at < offset[k + 1]; at++) {
+        if (at === offset[k] || client[this.#nodes[at]] !== client[this.#nodes[at - 1]]) starts.push(at)
+      }
+      this.#groupOffset[k + 1] = starts.length
+    }
+    this.#nodeOffset = Int32Array.from([...starts, this.#nodes.length])
   }
 
-  /** Each session's last write of the key in the past, and the unsure ones in it. */
-  *lastOf(key: number, past: Past): Generator<number> {
-    const { place } = this.#causal
-    for (const [client, nodes] of this.#acked.get(key) ?? []) {
-      const seen = past.of(client)
-      let low = 0
-      let high = nodes.length
+  /** Visits each session's last write of the key in the past, and the unsure ones in it. */
+  lastOf(key: number, past: Past, see: (write: number) => void): void {
+    const { client, place } = this.#causal
+    const nodes = this.#nodes
+    for (let g = this.#groupOffset[key]; g < this.#groupOffset[key + 1]; g++) {
+      const first = this.#nodeOffset[g]
+      const seen = past.of(client[nodes[first]])
+      if (seen === 0) continue
+      let low = first
+      let high = this.#nodeOffset[g + 1]
       while (low < high) {
         const middle = (low + high) >> 1
         if (place[nodes[middle]] < seen) low = middle + 1
         else high = middle
       }
-      if (low > 0) yield nodes[low - 1]
+      if (low > first) see(nodes[low - 1])
     }
-    for (const node of this.#unsure.get(key) ?? []) if (past.hasUnsure(node)) yield node
+    if (this.#unsure.size === 0) return
+    for (const node of this.#unsure.get(key) ?? []) if (past.hasUnsure(node)) see(node)
   }
 }
 
