@@ -91,16 +91,18 @@ function initials(key: PlainKey, ops: Op[], isCounter: boolean, offered: Set<str
     return Array.from({ length: most - least + 1 }, (_, i) => least + i)
   }
   const written = new Set(ops.filter((op) => op.isWrite).map((op) => op.text))
-  const unwritten = [...new Set(ops.filter((op) => op.isRead).map(returned))].filter(
+  // An unsure cas that took effect found its `expect` there as well.
+  const found = ops.filter((op) => op.isRead || (op.op === 'cas' && !op.acked))
+  const unwritten = [...new Set(found.map(returned))].filter(
     (t): t is string => t !== undefined && !written.has(t) && !offered.has(t),
   )
-  return unwritten.length === 0 ? [{ nobody: 'knows' }] : unwritten.map((t) => JSON.parse(t))
+  return [...unwritten.map((t) => JSON.parse(t)), { nobody: 'knows' }]
 }
 
 /** The text of what a register read returned, undefined where it does not say. */
 function returned(op: Op): string | undefined {
   if (op.op !== 'cas') return op.text
-  if (op.applied === false) return op.saw === undefined ? undefined : text(op.saw)
+  if (op.acked && op.applied === false) return op.saw === undefined ? undefined : text(op.saw)
   return text(op.expect)
 }
 
@@ -245,7 +247,6 @@ class Search {
     lastWrite: Op | undefined,
     since: Op[],
   ): { value: unknown; lastWrite: Op | undefined; since: Op[] } | undefined {
-    const now = text(value)
     const sees = (): boolean => {
       if (!op.isRead) return true
       if (lastWrite && this.#precedes(op, lastWrite)) return false
@@ -265,19 +266,19 @@ class Search {
     }
     switch (op.op) {
       case 'read':
-        if (op.text !== now && !(this.#countsAbsence() && absence(op.value) === absence(value)))
-          return undefined
+        if (!this.#same(op.value, value)) return undefined
         return sees() ? { value, lastWrite, since } : undefined
       case 'write':
       case 'delete':
         return { value: op.op === 'delete' ? null : op.value, lastWrite: op, since: [] }
       case 'cas': {
         if (op.acked && op.applied === false) {
-          if (op.saw !== undefined ? text(op.saw) !== now : text(op.expect) === now) return undefined
+          if (op.saw !== undefined ? !this.#same(op.saw, value) : this.#same(op.expect, value))
+            return undefined
           if (op.saw === undefined) return { value, lastWrite, since }
           return sees() ? { value, lastWrite, since } : undefined
         }
-        if (text(op.expect) !== now || !sees()) return undefined
+        if (!this.#same(op.expect, value) || !sees()) return undefined
         return { value: op.value, lastWrite: op, since: [] }
       }
       case 'increment': {
@@ -290,12 +291,14 @@ class Search {
     }
   }
 
-  #countsAbsence(): boolean {
-    return this.#isCounter || this.#isMixed
+  /** On a key with increments absence counts as 0. */
+  #same(a: unknown, b: unknown): boolean {
+    const countsAbsence = this.#isCounter || this.#isMixed
+    return countsAbsence ? text(absence(a)) === text(absence(b)) : text(a) === text(b)
   }
 }
 
-/** On a key with increments absence counts as 0. */
+/** The count that a key holds, where absence counts as 0. */
 function absence(value: unknown): unknown {
   return value ?? 0
 }

@@ -13,6 +13,13 @@ export async function decide(key: PlainKey, rule: PairRule): Promise<Decision> {
   return decideKey(gatherKey(history, indexByKey(history), 0, history.clockErrorNs), history.values, rule)
 }
 
+/** The program's answers under several promises. */
+export async function decideAll(key: PlainKey, rules: readonly PairRule[]): Promise<Decision[]> {
+  const history = await readHistory([textSource('tiny', keyText(key))])
+  const gathered = gatherKey(history, indexByKey(history), 0, history.clockErrorNs)
+  return rules.map((rule) => decideKey(gathered, history.values, rule))
+}
+
 /** How many random keys a property tries; MISREAD_RUNS multiplies it. */
 export function runs(n: number): number {
   return n * Number(process.env.MISREAD_RUNS ?? 1)

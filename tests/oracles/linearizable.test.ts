@@ -2,7 +2,7 @@ import fc from 'fast-check'
 import { describe, expect, it } from 'vitest'
 import { linearizable } from '../../src/promises/linearizable.js'
 import { type Family, keyText, tinyKey } from './arbitraries.js'
-import { bruteForce } from './brute-force.js'
+import { bruteForce, type PlainKey } from './brute-force.js'
 import { decide, runs } from './decide.js'
 
 /** Families whose keys are always decided. */
@@ -39,4 +39,18 @@ describe('the deciders agree with the definition of linearizable', () => {
       )
     },
   )
+
+  // The key may have been absent before, which is all that the cas needs.
+  it('where nothing but an unsure cas tells what the key held at the start', async () => {
+    const key: PlainKey = {
+      operations: [
+        { client: 'a', op: 'cas', key: 'k', expect: null, value: 1, start: 0, end: 1, outcome: 'unsure' },
+        { client: 'b', op: 'read', key: 'k', value: 1, start: 2, end: 3 },
+      ],
+      clockError: 0,
+      initialUnknown: true,
+    }
+    expect(bruteForce(key, { promise: 'linearizable' })).toBe(true)
+    expect((await decide(key, linearizable)).verdict).toBe('holds')
+  })
 })

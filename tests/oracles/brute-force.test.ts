@@ -1,0 +1,26 @@
+import fc from 'fast-check'
+import { describe, expect, it } from 'vitest'
+import { type Family, keyText, tinyKey } from './arbitraries.js'
+import { bruteForce } from './brute-force.js'
+import { witnessByDefinition } from './by-definition.js'
+import { runs } from './decide.js'
+import { PLAIN_RULES } from './rules.js'
+
+describe('the quick search agrees with the definition taken literally', () => {
+  it.each(['register', 'cas', 'counter', 'sizes', 'ambiguous', 'mixed'] as Family[])(
+    'under every promise, on random %s keys',
+    (family) => {
+      fc.assert(
+        fc.property(tinyKey(family, 6), (key) => {
+          for (const rule of PLAIN_RULES) {
+            const witness = witnessByDefinition(key, rule)
+            expect(bruteForce(key, rule), `${JSON.stringify(rule)}\n${keyText(key)}`).toBe(
+              witness !== undefined,
+            )
+          }
+        }),
+        { numRuns: runs(400) },
+      )
+    },
+  )
+})
