@@ -4,33 +4,22 @@
  * which is quicker, honest. Shares no code with it or with src/.
  */
 import type { PlainKey, PlainOperation, PlainRule } from './brute-force.js'
-
-interface Operation extends PlainOperation {
-  readonly at: number
-  readonly acked: boolean
-  readonly reads: boolean
-  readonly writes: boolean
-}
-
-type Role = 'read' | 'write'
-type Kind = 'register' | 'counter' | 'mixed'
-type Pair = (a: Operation, b: Operation) => boolean
+import {
+  countedPairs,
+  countsAtAll,
+  type Kind,
+  type Operation,
+  type PairInRoles,
+  precedes,
+  readKey,
+} from './plain-pairs.js'
 
 /** A sequence that shows the promise kept, or undefined where there is none. */
 export function witnessByDefinition(key: PlainKey, rule: PlainRule): PlainOperation[] | undefined {
-  const all = key.operations.map((op, at): Operation => {
-    const outcome = op.outcome ?? (op.end === undefined ? 'unsure' : 'acked')
-    const acked = outcome === 'acked'
-    const failed = op.op === 'cas' && acked && op.applied === false
-    const answered = op.op === 'read' || op.op === 'cas' || (op.op === 'increment' && op.value !== undefined)
-    return { ...op, outcome, at, acked, reads: acked && answered, writes: op.op !== 'read' && !failed }
-  })
-  const isKind = (...ops: string[]): boolean => all.some(({ op }) => ops.includes(op))
-  const changes = isKind('write', 'cas', 'delete')
-  const kind: Kind = !isKind('increment') ? 'register' : changes ? 'mixed' : 'counter'
+  const { all, kind } = readKey(key)
   const acked = all.filter((op) => op.acked)
   const unsure = all.filter((op) => op.outcome === 'unsure' && op.op !== 'read')
-  const counted = countedPairs(key, rule, kind, acked)
+  const counted = countedPairs(key, rule, kind, all)
   for (const initial of possibleStarts(key, kind, all)) {
     for (const chosen of subsets(unsure)) {
       const sequence = arrange([...acked, ...chosen], [], initial, key, rule, kind, counted, all)
@@ -54,71 +43,18 @@ function arrange(
   key: PlainKey,
   rule: PlainRule,
   kind: Kind,
-  counted: Pair,
+  counted: PairInRoles,
   all: readonly Operation[],
 ): readonly Operation[] | undefined {
   if (left.length === 0) return placed
   for (const next of left) {
-    if (placed.some((earlier) => counted(next, earlier))) continue
+    if (placed.some((earlier) => countsAtAll(counted, next, earlier))) continue
     if (!answersAsRecorded(next, placed, initial, key, rule, kind, all)) continue
     const rest = left.filter((op) => op !== next)
     const sequence = arrange(rest, [...placed, next], initial, key, rule, kind, counted, all)
     if (sequence) return sequence
   }
   return undefined
-}
-
-/** a ≺ b: rules 1 to 3. */
-function precedes(key: PlainKey, a: Operation, b: Operation): boolean {
-  if (!a.acked || a === b) return false
-  if (a.client === b.client) {
-    if (a.end! > b.start) return false
-    const otherWayRoundToo = b.end !== undefined && b.end <= a.start
-    return !otherWayRoundToo || a.at < b.at
-  }
-  return a.end! + clocksApart(key, a, b) < b.start
-}
-
-/** 2·clockError between different clients on different hosts; a client without a host has a clock of its own. */
-function clocksApart(key: PlainKey, a: Operation, b: Operation): number {
-  if (a.client === b.client) return 0
-  return a.host !== undefined && a.host === b.host ? 0 : 2 * key.clockError
-}
-
-/** The promises' table. */
-function countedPairs(key: PlainKey, rule: PlainRule, kind: Kind, acked: readonly Operation[]): Pair {
-  const { promise, within, settle = 0 } = rule
-  const certainlyAfter = (a: Operation, b: Operation): number => b.start - a.end! - clocksApart(key, a, b)
-  const isClosing = (b: Operation): boolean =>
-    acked.every((w) => !w.writes || (precedes(key, w, b) && certainlyAfter(w, b) >= settle))
-  const ofPromise = (a: Operation, ra: Role, b: Operation, rb: Role): boolean => {
-    const session = a.client === b.client
-    const pair = `${ra}-${rb}`
-    if (promise === 'linearizable') return true
-    if (promise === 'regular') return pair !== 'read-read'
-    if (promise === 'coherent') return session
-    if (promise === 'read-your-writes') return session && pair === 'write-read'
-    if (promise === 'monotonic-reads') return session && pair === 'read-read'
-    if (promise === 'writes-follow-reads') return session && pair === 'read-write'
-    if (promise === 'durable') return pair === 'write-read' && isClosing(b)
-    if (promise === 'bounded-staleness')
-      return within !== undefined && pair === 'write-read' && certainlyAfter(a, b) > within
-    if (promise === 'written-values' || promise === 'monotonic-writes') return false
-    throw new Error(`no such promise: ${promise}`)
-  }
-  return (a, b) => {
-    if (!precedes(key, a, b)) return false
-    const ofA = (['read', 'write'] as const).filter((role) => (role === 'read' ? a.reads : a.writes))
-    const ofB = (['read', 'write'] as const).filter((role) => (role === 'read' ? b.reads : b.writes))
-    return ofA.some((ra) =>
-      ofB.some((rb) => {
-        if (ra === 'write' && rb === 'write' && kind !== 'counter') return true
-        // A read of a counter does not include an increment that it precedes.
-        if (ra === 'read' && rb === 'write' && kind === 'counter') return true
-        return ofPromise(a, ra, b, rb)
-      }),
-    )
-  }
 }
 
 /** Whether a single copy of the key, left by `placed`, answers this operation as it was recorded. */
