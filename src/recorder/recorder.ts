@@ -7,6 +7,9 @@ import { CLOCK_NAME, nowNs } from './clock.js'
 import { RecordFile } from './record-file.js'
 import { type RecordableValue, shown, valueText } from './values.js'
 
+/** Whose deletes expiry and eviction are. */
+const STORE_CLIENT = 'store-itself'
+
 export interface RecorderOptions {
   /** where to write, `run.ndjson` */
   readonly path: string
@@ -52,7 +55,7 @@ export class Recorder {
   readonly host: string
   readonly #file: RecordFile
   readonly #refusedWhen: (error: unknown) => boolean
-  readonly #clients = new Set<string>()
+  readonly #clients = new Set([STORE_CLIENT])
   #values = 0
   #ids = 0
 
@@ -124,6 +127,19 @@ export class Recorder {
       over = true
       this.#file.write(line(nowNs()))
     }
+  }
+
+  /**
+   * Records that the store may delete a key by itself from now on: call it before each request that sets a time to
+   * live, or where the store may evict. In the recording it is an unsure delete by a client of the store's own.
+   */
+  mayVanish(key: string): void {
+    if (typeof key !== 'string') throw new TypeError(`found ${shown(key)} as a key, expected a string`)
+    const [client, host] = [`${STORE_CLIENT}@${this.run}`, this.host].map((name) => JSON.stringify(name))
+    const atNs = nowNs()
+    this.#file.write(
+      `{"client":${client},"host":${host},"op":"delete","key":${JSON.stringify(key)},"start":${atNs},"end":${atNs},"outcome":"unsure"}`,
+    )
   }
 
   /** Hands what is held in a batch to the operating system. */

@@ -3,7 +3,7 @@ import { tmpdir } from 'node:os'
 import { join } from 'node:path'
 import { runInNewContext } from 'node:vm'
 import { afterAll, describe, expect, it, vi } from 'vitest'
-import { OUTCOME_NAMES, UNSURE } from '../../src/history/columns.js'
+import { KIND_NAMES, OUTCOME_NAMES, UNSURE } from '../../src/history/columns.js'
 import { readHistory } from '../../src/history/read.js'
 import { fileSource } from '../../src/history/source.js'
 import {
@@ -267,6 +267,25 @@ describe('a recorder', () => {
       '"node":"replica-2","trace":18446744073709551615',
     )
     expect((await historyOf(recorder.paths)).count).toBe(1)
+  })
+
+  it('records what the store may delete by itself as unsure deletes of a client of its own', async () => {
+    const recorder = new Recorder({ path: path() })
+    const gate = recorder.client('gate-1')
+    for (let i = 0; i < 3; i++) {
+      recorder.mayVanish('lease')
+      await gate.write('lease', recorder.uniqueValue(), async () => {})
+    }
+    expect(() => recorder.client('store-itself')).toThrow('exists already')
+    expect(() => recorder.mayVanish(7 as unknown as string)).toThrow('a string')
+    recorder.close()
+    const history = await historyOf(recorder.paths)
+    const seen = Array.from({ length: history.count }, (_, i) =>
+      [KIND_NAMES[history.kind[i]], OUTCOME_NAMES[history.outcome[i]]].join(' '),
+    )
+    expect(seen.sort()).toEqual([...Array(3).fill('delete unsure'), ...Array(3).fill('write acked')])
+    expect(history.clients.size).toBe(2)
+    expect(history.hosts.size).toBe(1)
   })
 
   it('stamps all recorders of a process by one clock, near to wall time and never going back', async () => {
