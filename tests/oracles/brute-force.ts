@@ -74,21 +74,28 @@ export function bruteForce(key: PlainKey, rule: PlainRule): boolean {
       .filter((op) => !op.isWrite || op.outcome === 'refused')
       .map((op) => (op.op === 'read' ? '' : op.text)),
   )
-  return initials(key, ops, isCounter, offered).some((initial) => search.holds(initial))
+  return initials(key, ops, isCounter, isMixed, offered).some((initial) => search.holds(initial))
 }
 
 /** The initial values to try: the given one, or under initialUnknown every one that could matter. */
-function initials(key: PlainKey, ops: Op[], isCounter: boolean, offered: Set<string>): unknown[] {
+function initials(
+  key: PlainKey,
+  ops: Op[],
+  isCounter: boolean,
+  isMixed: boolean,
+  offered: Set<string>,
+): unknown[] {
   if (key.initial !== undefined) return [key.initial]
   if (!key.initialUnknown) return [isCounter ? 0 : null]
   if (isCounter) {
-    // A mixed key may have started with anything; numbers in reach and a value of its own are enough.
-    const counts = ops
-      .filter((op) => op.isRead && typeof op.value === 'number')
-      .map((op) => op.value as number)
+    // A mixed key may have started with something that is no count; of the counts those in reach are enough.
+    const met = ops.flatMap(({ value, expect, saw }) => [value, expect, saw])
+    const counts = met.filter((value): value is number => typeof value === 'number')
+    const others = met.filter((value) => value !== undefined && value !== null && typeof value !== 'number')
     const span = ops.reduce((sum, op) => sum + Math.abs(op.by ?? 1), 0)
     const [least, most] = [Math.min(0, ...counts) - span, Math.max(0, ...counts) + span]
-    return Array.from({ length: most - least + 1 }, (_, i) => least + i)
+    const reachable = Array.from({ length: most - least + 1 }, (_, i) => least + i)
+    return isMixed ? [...reachable, ...others, { nobody: 'knows' }] : reachable
   }
   const written = new Set(ops.filter((op) => op.isWrite).map((op) => op.text))
   // An unsure cas that took effect found its `expect` there as well.

@@ -118,13 +118,13 @@ function possibleStarts(key: PlainKey, kind: Kind, all: readonly Operation[]): u
   const effective = all.filter((op) => op.outcome !== 'refused')
   if (kind !== 'register') {
     // A count within reach of what was read; a mixed key may have held something else as well.
-    const seen = [0, ...effective.flatMap(({ value, expect, saw }) => [value, expect, saw])].filter(
-      (value): value is number => typeof value === 'number',
-    )
+    const met = effective.flatMap(({ value, expect, saw }) => [value, expect, saw])
+    const seen = [0, ...met.filter((value): value is number => typeof value === 'number')]
+    const others = met.filter((value) => typeof value === 'string')
     const reach = effective.reduce((sum, { by }) => sum + Math.abs(by ?? 1), 1)
     const least = Math.min(...seen) - reach
     const counts = Array.from({ length: Math.max(...seen) + reach - least + 1 }, (_, i) => least + i)
-    return kind === 'counter' ? counts : [...counts, 'something else']
+    return kind === 'counter' ? counts : [...counts, ...others, { plays: 'no part' }]
   }
   // The one value that was found and that nobody wrote or offered; else a value that plays no part.
   const text = (value: unknown): string => JSON.stringify(value ?? null)
