@@ -230,7 +230,10 @@ function skew(sent: readonly Sent[], offsets: readonly number[], clockError: num
 }
 
 /** Lines in any order, each client's in its own. */
-function shuffleLines<T extends PlainOperation>(operations: readonly T[], places: readonly number[]): T[] {
+export function shuffleLines<T extends PlainOperation>(
+  operations: readonly T[],
+  places: readonly number[],
+): T[] {
   const byClient = new Map<string, { op: T; place: number }[]>()
   operations.forEach((op, i) => {
     const list = byClient.get(op.client) ?? []
