@@ -58,9 +58,17 @@ export const TIMED: readonly PublishedCase[] = [
     source: PENDING,
     processes: ['w1[0,1] w2[2,∞]', 'r2[4,5]'],
     lin: 'yes',
+    coh: 'yes',
     why: 'a pending write may have taken effect',
   },
-  { id: 'PEND-2', source: PENDING, processes: ['w1[0,1] w2[2,∞]', 'r1[4,5]'], lin: 'yes', why: 'or not' },
+  {
+    id: 'PEND-2',
+    source: PENDING,
+    processes: ['w1[0,1] w2[2,∞]', 'r1[4,5]'],
+    lin: 'yes',
+    coh: 'yes',
+    why: 'or not',
+  },
   {
     id: 'PEND-3',
     source: PENDING,
@@ -114,6 +122,7 @@ export const TIMED: readonly PublishedCase[] = [
     source: PENDING,
     processes: ['c0>1[0,10]', 'c0>2![0,10]'],
     lin: 'yes',
+    coh: 'yes',
     ambiguous: true,
     why: 'a failed cas does not say what it saw',
   },
@@ -122,6 +131,7 @@ export const TIMED: readonly PublishedCase[] = [
     source: PENDING,
     processes: ['c0>1![0,1]'],
     lin: 'no',
+    coh: 'no',
     ambiguous: true,
     why: 'nothing else could have changed it',
   },
@@ -175,8 +185,20 @@ export const TIMED: readonly PublishedCase[] = [
     coh: 'yes',
     why: 'new/old inversion by two readers',
   },
+  ...['1 3', '3 1', '2 3', '3 3'].map((pair): PublishedCase => {
+    const [first, second] = pair.split(' ')
+    return {
+      id: `L-INV ${first},${second}`,
+      source: LAMPORT,
+      processes: ['w1[0,1] w2[10,20]', `r${first}[11,13] r${second}[14,16]`],
+      lin: 'no',
+      reg: 'no',
+      coh: 'no',
+      why: 'only a safe register may invent values',
+    }
+  }),
   {
-    id: 'L-INV 3',
+    id: 'L-INV 3,2',
     source: LAMPORT,
     processes: ['w1[0,1] w2[10,20]', 'r3[11,13] r2[14,16]'],
     lin: 'no',
@@ -244,6 +266,48 @@ export const TIMED: readonly PublishedCase[] = [
     why: 'the initial value counts as a write',
   },
   {
+    id: 'K-5',
+    source: GLS,
+    processes: ['w1[0,1]', 'w2[0,2]', 'r1[4,5]', 'r2[6,7]'],
+    lin: 'no',
+    reg: 'no',
+    why: '2-atomic only: two forward zones that overlap (Z-3)',
+  },
+  {
+    id: 'K-6',
+    source: GLS,
+    processes: ['w1[0,1]', 'w2[3,5]', 'r1[8,9]'],
+    lin: 'no',
+    reg: 'no',
+    why: '2-atomic only: a backward zone inside a forward one (Z-1)',
+  },
+  {
+    id: 'TS-STRICT',
+    source: 'van Steen and Tanenbaum, Distributed Systems, Fig. 7.4 (from memory; recomputed)',
+    processes: ['w1[0,1]', 'r0[2,3] r1[4,5]'],
+    lin: 'no',
+    coh: 'yes',
+    why: 'sequentially consistent and not strict',
+  },
+  {
+    id: 'HS-NEGATIVE',
+    source: 'Herlihy and Shavit, The Art of Multiprocessor Programming, ch. 3 (from memory; recomputed)',
+    processes: ['w7[0,10]', 'w-3[0,10]', 'r-7[20,30]'],
+    lin: 'no',
+    reg: 'no',
+    coh: 'no',
+    why: 'a value made up of two that were written together',
+  },
+  {
+    id: 'HS-ORDER',
+    source: 'Herlihy and Shavit, The Art of Multiprocessor Programming, ch. 3 (from memory; recomputed)',
+    processes: ['w7[0,1] w-3[2,3] r7[4,5]'],
+    lin: 'no',
+    reg: 'no',
+    coh: 'no',
+    why: 'against the order of one program',
+  },
+  {
     id: 'MW-1',
     source: SHAO,
     processes: ['w1[0,10]', 'w2[0,10]', 'r1[11,12]', 'r2[11,12]'],
@@ -267,99 +331,53 @@ export const TIMED: readonly PublishedCase[] = [
     reg: 'no',
     why: 'stale after a finished write',
   },
+  {
+    id: 'MW-4',
+    source: SHAO,
+    processes: ['w0[0,10] r1[20,30]', 'w1[5,60] r1[70,80]', 'w0[40,50]'],
+    lin: 'no',
+    reg: 'no',
+    ambiguous: true,
+    why: 'HW-R6 again: weak regularity would allow it, write order does not',
+  },
 ]
 
-const TEXTBOOK = 'van Steen and Tanenbaum, Distributed Systems, ch. 7 (recomputed)'
-const LITMUS = 'Alglave, Maranget, Tautschnig 2014, SC per location (recomputed)'
-const TERRY = 'Terry et al. 1994, session guarantees (constructed counterparts)'
+const TERRY = 'Terry et al. 1994, session guarantees (constructed counterparts; canonical minimal violations)'
 
-/** Histories without times: only the order in each process. One register; the verdict is on coherence. */
-export const TIMELESS: readonly {
-  id: string
-  source: string
-  processes: readonly string[]
-  coh: Verdict
-  initial?: number
-  why: string
+/** Histories without times, of one register: only the order in each process. The session promises that they break. */
+export const SESSIONS: readonly {
+  readonly id: string
+  readonly source: string
+  readonly processes: readonly string[]
+  readonly breaks: readonly string[]
+  readonly why: string
 }[] = [
   {
-    id: 'TS-SEQ-a',
-    source: TEXTBOOK,
-    processes: ['w1', 'w2', 'r2 r1', 'r2 r1'],
-    coh: 'yes',
-    why: 'both readers see one order',
+    id: 'SG-RYW',
+    source: TERRY,
+    processes: ['w1 r0'],
+    breaks: ['read-your-writes'],
+    why: 'a read without the write before it',
   },
   {
-    id: 'TS-SEQ-b',
-    source: TEXTBOOK,
-    processes: ['w1', 'w2', 'r2 r1', 'r1 r2'],
-    coh: 'no',
-    why: 'they see two',
+    id: 'SG-MR',
+    source: TERRY,
+    processes: ['w1 w2', 'r2 r1'],
+    breaks: ['monotonic-reads'],
+    why: 'the writer gives the order, the reader goes against it',
   },
-  {
-    id: 'TS-SEQ-c',
-    source: TEXTBOOK,
-    processes: ['w1 r2', 'r1 r2', 'r1 w2', 'r1 r2'],
-    coh: 'yes',
-    why: 'a reader that also writes',
-  },
-  {
-    id: 'TS-CAUSAL-1',
-    source: TEXTBOOK,
-    processes: ['w1 w3', 'r1 w2', 'r1 r3 r2', 'r1 r2 r3'],
-    coh: 'no',
-    why: 'causal, and yet not one order',
-  },
-  {
-    id: 'BEGH-a',
-    source: 'Bouajjani et al. 2017 (from memory; recomputed)',
-    processes: ['w1 r2', 'w2 r1'],
-    coh: 'no',
-    why: 'each sees the other last',
-  },
-  {
-    id: 'BEGH-d',
-    source: 'Bouajjani et al. 2017 (from memory; recomputed)',
-    processes: ['w1', 'w2 r1 r2'],
-    coh: 'no',
-    why: 'a writer goes back to its own value',
-  },
-  { id: 'CoWW', source: LITMUS, processes: ['w1 w2', 'r2 r1'], coh: 'no', why: 'write, write' },
-  { id: 'CoRW1', source: LITMUS, processes: ['r1 w1'], coh: 'no', why: 'read, write' },
-  {
-    id: 'CoRW2',
-    source: LITMUS,
-    processes: ['r2 w1', 'w2', 'r1 r2'],
-    coh: 'no',
-    why: 'read, write of another',
-  },
-  { id: 'CoWR', source: LITMUS, processes: ['w1 r2', 'w2', 'r2 r1'], coh: 'no', why: 'write, read' },
-  { id: 'CoWR-0', source: LITMUS, processes: ['w1 r0'], coh: 'no', why: 'own write missed' },
-  { id: 'CoRR', source: LITMUS, processes: ['w1', 'r1 r0'], coh: 'no', why: 'read, read' },
-  { id: 'CoRR-2', source: LITMUS, processes: ['w1', 'w2', 'r1 r2', 'r2 r1'], coh: 'no', why: 'two readers' },
-  {
-    id: 'ALPHA-2',
-    source: 'Alpha Architecture Handbook §5.6.2',
-    processes: ['w2', 'w3 r2 r3'],
-    coh: 'no',
-    initial: 1,
-    why: 'an architecture standard',
-  },
-  {
-    id: 'ALPHA-3',
-    source: 'Alpha Architecture Handbook §5.6.2',
-    processes: ['w2 r3', 'w3', 'r3 r2'],
-    coh: 'no',
-    initial: 1,
-    why: 'the same, seen by a third',
-  },
-  { id: 'SG-RYW', source: TERRY, processes: ['w1 r0'], coh: 'no', why: 'read your writes' },
-  { id: 'SG-MR', source: TERRY, processes: ['w1 w2', 'r2 r1'], coh: 'no', why: 'monotonic reads' },
   {
     id: 'SG-MR0',
     source: TERRY,
     processes: ['w1', 'r1 r0'],
-    coh: 'no',
-    why: 'monotonic reads, from the initial value',
+    breaks: ['monotonic-reads'],
+    why: 'the initial value is older than any write',
+  },
+  {
+    id: 'SG-OK on x',
+    source: TERRY,
+    processes: ['w1 r1', 'r1', 'r1'],
+    breaks: [],
+    why: 'a case that breaks nothing: all four guarantees kept',
   },
 ]

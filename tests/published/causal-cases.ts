@@ -1,7 +1,8 @@
 /**
- * Published histories of several objects without times, with the verdicts for weak causal consistency (CC, here `causal`) and
- * causal convergence (CCv, here `causal-convergence`), all recomputed by exhaustive enumeration from the definitions. `w(x)1`
- * writes 1 to x, processes are separated by `;`. Initially every object holds 0 (ALPHA: 1).
+ * Published histories of several objects without times, with the verdicts for weak causal consistency (CC, here `causal`),
+ * causal convergence (CCv, here `causal-convergence`) and coherence of each location (COH, here `coherent`), all
+ * recomputed by exhaustive enumeration from the definitions. `w(x)1` writes 1 to x, processes are separated by `;`.
+ * Initially every object holds 0 (ALPHA: 1).
  */
 export interface CausalCase {
   readonly id: string
@@ -9,6 +10,8 @@ export interface CausalCase {
   readonly history: string
   readonly causal: boolean
   readonly convergence: boolean
+  /** coherence of each object by itself (COH) */
+  readonly coherent: boolean
   /** of the bad patterns of the two criteria, those that are present */
   readonly patterns: readonly string[]
   /** some value is written twice, or the initial one is written: the patterns do not apply, its keys may be left out */
@@ -22,6 +25,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 ; P2: w(x)2 ; P3: r(x)2 r(x)1 ; P4: r(x)2 r(x)1',
     causal: true,
     convergence: true,
+    coherent: true,
     patterns: [],
   },
   {
@@ -30,6 +34,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 ; P2: w(x)2 ; P3: r(x)2 r(x)1 ; P4: r(x)1 r(x)2',
     causal: true,
     convergence: false,
+    coherent: false,
     patterns: ['CyclicCF'],
   },
   {
@@ -38,6 +43,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 r(x)2 ; P2: r(x)1 r(x)2 ; P3: r(x)1 w(x)2 ; P4: r(x)1 r(x)2',
     causal: true,
     convergence: true,
+    coherent: true,
     patterns: [],
   },
   {
@@ -46,6 +52,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 w(y)1 r(x)1 r(y)2 ; P2: w(y)2 w(x)2 r(x)1 r(y)2',
     causal: true,
     convergence: false,
+    coherent: true,
     patterns: ['CyclicCF'],
   },
   {
@@ -54,6 +61,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 r(y)0 r(z)0 ; P2: w(y)1 r(x)0 r(z)0 ; P3: w(z)1 r(x)0 r(y)0',
     causal: true,
     convergence: true,
+    coherent: true,
     patterns: [],
   },
   {
@@ -62,6 +70,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 r(y)0 r(z)0 ; P2: w(y)1 r(x)1 r(z)0 ; P3: w(z)1 r(x)0 r(y)1',
     causal: true,
     convergence: true,
+    coherent: true,
     patterns: [],
   },
   {
@@ -70,6 +79,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 w(x)3 ; P2: r(x)1 w(x)2 ; P3: r(x)1 r(x)3 r(x)2 ; P4: r(x)1 r(x)2 r(x)3',
     causal: true,
     convergence: false,
+    coherent: false,
     patterns: ['CyclicCF'],
   },
   {
@@ -78,6 +88,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 ; P2: r(x)1 w(x)2 ; P3: r(x)2 r(x)1 ; P4: r(x)1 r(x)2',
     causal: false,
     convergence: false,
+    coherent: false,
     patterns: ['CyclicCF', 'WriteCORead'],
   },
   {
@@ -86,6 +97,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 ; P2: w(x)2 ; P3: r(x)2 r(x)1 ; P4: r(x)1 r(x)2',
     causal: true,
     convergence: false,
+    coherent: false,
     patterns: ['CyclicCF'],
   },
   {
@@ -94,6 +106,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 ; P2: r(x)1 w(x)2 w(x)3 ; P3: r(x)2 r(x)1 r(x)3 ; P4: r(x)1 r(x)2 r(x)3',
     causal: false,
     convergence: false,
+    coherent: false,
     patterns: ['CyclicCF', 'WriteCORead'],
   },
   {
@@ -102,6 +115,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 ; P2: r(x)1 w(x)2 ; P3: r(x)1 r(x)2 ; P4: r(x)2 r(x)1',
     causal: false,
     convergence: false,
+    coherent: false,
     patterns: ['CyclicCF', 'WriteCORead'],
   },
   {
@@ -110,6 +124,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 w(y)2 ; P2: r(y)2 w(x)3 r(x)1',
     causal: false,
     convergence: false,
+    coherent: true,
     patterns: ['CyclicCF', 'WriteCORead'],
   },
   {
@@ -118,6 +133,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 r(x)2 ; P2: w(x)2 r(x)1',
     causal: true,
     convergence: false,
+    coherent: false,
     patterns: ['CyclicCF'],
   },
   {
@@ -126,6 +142,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(z)1 w(x)1 w(y)1 ; P2: w(x)2 r(z)0 r(y)1 r(x)2',
     causal: true,
     convergence: true,
+    coherent: true,
     patterns: [],
   },
   {
@@ -134,6 +151,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 r(y)0 w(y)1 r(x)1 ; P2: w(x)2 r(y)0 w(y)2 r(x)2',
     causal: true,
     convergence: true,
+    coherent: true,
     patterns: [],
   },
   {
@@ -142,6 +160,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 ; P2: w(x)2 r(x)1 r(x)2',
     causal: true,
     convergence: false,
+    coherent: false,
     patterns: ['CyclicCF'],
   },
   {
@@ -150,6 +169,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 w(y)1 ; P2: r(y)1 w(x)2 ; P3: r(x)2 r(x)1',
     causal: false,
     convergence: false,
+    coherent: true,
     patterns: ['CyclicCF', 'WriteCORead'],
   },
   {
@@ -158,6 +178,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)2 w(y)2 w(y)3 r(z)5 w(x)4 ; P2: w(x)1 r(y)3 w(x)7 w(z)5 r(x)4 r(x)9 ; P3: r(z)5 w(x)9',
     causal: true,
     convergence: true,
+    coherent: true,
     patterns: [],
   },
   {
@@ -166,6 +187,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)5 w(y)3 ; P2: w(x)2 r(y)3 r(x)5 w(z)4 ; P3: r(z)4 r(x)2',
     causal: true,
     convergence: false,
+    coherent: true,
     patterns: ['CyclicCF'],
   },
   {
@@ -174,6 +196,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 r(x)0',
     causal: false,
     convergence: false,
+    coherent: false,
     patterns: ['WriteCOInitRead'],
   },
   {
@@ -182,6 +205,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 w(x)2 ; P2: r(x)2 r(x)1',
     causal: false,
     convergence: false,
+    coherent: false,
     patterns: ['CyclicCF', 'WriteCORead'],
   },
   {
@@ -190,6 +214,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 w(y)1 ; P2: r(y)1 r(x)0',
     causal: false,
     convergence: false,
+    coherent: true,
     patterns: ['WriteCOInitRead'],
   },
   {
@@ -198,6 +223,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 ; P2: r(x)1 w(y)1 ; P3: r(y)1 r(x)0',
     causal: false,
     convergence: false,
+    coherent: true,
     patterns: ['WriteCOInitRead'],
   },
   {
@@ -206,6 +232,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 r(y)0 ; P2: w(y)1 r(x)0',
     causal: true,
     convergence: true,
+    coherent: true,
     patterns: [],
   },
   {
@@ -214,6 +241,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 w(y)1 ; P2: r(y)1 r(x)0',
     causal: false,
     convergence: false,
+    coherent: true,
     patterns: ['WriteCOInitRead'],
   },
   {
@@ -222,6 +250,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: r(x)1 w(y)1 ; P2: r(y)1 w(x)1',
     causal: false,
     convergence: false,
+    coherent: true,
     patterns: ['CyclicCF', 'CyclicCO'],
   },
   {
@@ -230,6 +259,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 ; P2: w(y)1 ; P3: r(x)1 r(y)0 ; P4: r(y)1 r(x)0',
     causal: true,
     convergence: true,
+    coherent: true,
     patterns: [],
   },
   {
@@ -238,6 +268,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 ; P2: r(x)1 w(y)1 ; P3: r(y)1 r(x)0',
     causal: false,
     convergence: false,
+    coherent: true,
     patterns: ['WriteCOInitRead'],
   },
   {
@@ -246,6 +277,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 w(y)1 ; P2: r(y)1 w(z)1 ; P3: r(z)1 r(x)0',
     causal: false,
     convergence: false,
+    coherent: true,
     patterns: ['WriteCOInitRead'],
   },
   {
@@ -254,6 +286,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 ; P2: r(x)1 r(y)0 ; P3: w(y)1 r(x)0',
     causal: true,
     convergence: true,
+    coherent: true,
     patterns: [],
   },
   {
@@ -262,6 +295,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)2 w(y)1 ; P2: r(y)1 w(x)1 ; P3: r(x)1 r(x)2',
     causal: false,
     convergence: false,
+    coherent: true,
     patterns: ['CyclicCF', 'WriteCORead'],
   },
   {
@@ -270,6 +304,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 w(y)1 ; P2: w(y)2 r(x)0 ; P3: r(y)1 r(y)2',
     causal: true,
     convergence: true,
+    coherent: true,
     patterns: [],
   },
   {
@@ -278,6 +313,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 w(y)2 ; P2: w(y)1 w(x)2 ; P3: r(x)2 r(x)1 ; P4: r(y)2 r(y)1',
     causal: true,
     convergence: false,
+    coherent: true,
     patterns: ['CyclicCF'],
   },
   {
@@ -286,6 +322,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 w(x)2 ; P2: r(x)2 r(x)1',
     causal: false,
     convergence: false,
+    coherent: false,
     patterns: ['CyclicCF', 'WriteCORead'],
   },
   {
@@ -294,6 +331,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: r(x)1 w(x)1',
     causal: false,
     convergence: false,
+    coherent: false,
     patterns: ['CyclicCF', 'CyclicCO'],
   },
   {
@@ -302,6 +340,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: r(x)2 w(x)1 ; P2: w(x)2 ; P3: r(x)1 r(x)2',
     causal: false,
     convergence: false,
+    coherent: false,
     patterns: ['CyclicCF', 'WriteCORead'],
   },
   {
@@ -310,6 +349,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 r(x)2 ; P2: w(x)2 ; P3: r(x)2 r(x)1',
     causal: true,
     convergence: false,
+    coherent: false,
     patterns: ['CyclicCF'],
   },
   {
@@ -318,6 +358,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 r(x)0',
     causal: false,
     convergence: false,
+    coherent: false,
     patterns: ['WriteCOInitRead'],
   },
   {
@@ -326,6 +367,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 ; P2: r(x)1 r(x)0',
     causal: false,
     convergence: false,
+    coherent: false,
     patterns: ['WriteCOInitRead'],
   },
   {
@@ -334,6 +376,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 ; P2: w(x)2 ; P3: r(x)1 r(x)2 ; P4: r(x)2 r(x)1',
     causal: true,
     convergence: false,
+    coherent: false,
     patterns: ['CyclicCF'],
   },
   {
@@ -342,6 +385,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)2 ; P2: w(x)3 r(x)2 r(x)3',
     causal: true,
     convergence: false,
+    coherent: false,
     patterns: ['CyclicCF'],
   },
   {
@@ -350,6 +394,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)2 r(x)3 ; P2: w(x)3 ; P3: r(x)3 r(x)2',
     causal: true,
     convergence: false,
+    coherent: false,
     patterns: ['CyclicCF'],
   },
   {
@@ -358,6 +403,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: r(b)1 w(a)1 ; P2: r(a)1 w(b)1',
     causal: false,
     convergence: false,
+    coherent: true,
     patterns: ['CyclicCF', 'CyclicCO'],
   },
   {
@@ -366,6 +412,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)0 w(x)1 r(y)0 ; P2: w(y)0 w(y)1 r(x)0',
     causal: true,
     convergence: true,
+    coherent: true,
     patterns: [],
     notDifferentiated: true,
   },
@@ -375,6 +422,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)0 w(x)1 w(y)2 ; P2: r(y)2 r(x)0',
     causal: false,
     convergence: false,
+    coherent: true,
     patterns: [],
     notDifferentiated: true,
   },
@@ -384,6 +432,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)0 r(x)1 ; P2: w(x)1 r(x)0',
     causal: true,
     convergence: false,
+    coherent: false,
     patterns: [],
     notDifferentiated: true,
   },
@@ -393,6 +442,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)0 w(x)1 w(z)0 r(y)0 ; P2: w(y)0 w(y)1 w(z)1 r(x)0',
     causal: true,
     convergence: true,
+    coherent: true,
     patterns: [],
     notDifferentiated: true,
   },
@@ -402,6 +452,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)0 w(y)0 ; P2: r(y)0 w(x)1 ; P3: r(x)1 r(x)0',
     causal: true,
     convergence: true,
+    coherent: true,
     patterns: [],
     notDifferentiated: true,
   },
@@ -411,6 +462,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)0 w(x)1 w(y)1 ; P2: r(y)1 r(z)0 ; P3: w(z)0 w(z)1 w(v)1 ; P4: r(v)1 r(x)0',
     causal: true,
     convergence: true,
+    coherent: true,
     patterns: [],
     notDifferentiated: true,
   },
@@ -420,6 +472,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 w(y)1 ; P2: r(y)1 r(x)0',
     causal: false,
     convergence: false,
+    coherent: true,
     patterns: ['WriteCOInitRead'],
   },
   {
@@ -428,6 +481,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(x)1 r(y)0 ; P2: w(y)1 r(x)0',
     causal: true,
     convergence: true,
+    coherent: true,
     patterns: [],
   },
   {
@@ -436,6 +490,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(a)1 ; P2: r(a)1 w(b)1 ; P3: r(b)1 r(a)0',
     causal: false,
     convergence: false,
+    coherent: true,
     patterns: ['WriteCOInitRead'],
   },
   {
@@ -444,6 +499,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(a)1 ; P2: r(a)1 r(b)0 ; P3: w(b)1 ; P4: r(b)1 r(a)0',
     causal: true,
     convergence: true,
+    coherent: true,
     patterns: [],
   },
   {
@@ -452,6 +508,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(a)1 r(a)1 r(b)0 ; P2: w(b)1 r(b)1 r(a)0',
     causal: true,
     convergence: true,
+    coherent: true,
     patterns: [],
   },
   {
@@ -460,6 +517,7 @@ export const CAUSAL_CASES: readonly CausalCase[] = [
     history: 'P1: w(a)1 w(c)1 r(c)1 r(b)0 ; P2: w(b)1 w(c)2 r(c)2 r(a)0',
     causal: true,
     convergence: true,
+    coherent: true,
     patterns: [],
   },
 ]
