@@ -81,22 +81,44 @@ export class Newer {
     }
   }
 
-  /** The versions newer than `version`, the nearest first, up to REACH_LIMIT of them. */
+  /**
+   * The versions newer than `version` whose write began before the last read of `version` did (later ones prove
+   * nothing), the nearest first, up to REACH_LIMIT of them.
+   */
   reach(version: number): Reach {
-    const known = this.#reaches.get(version)
-    if (known) return known
-    const { found, count } = this.versions
+    let reach = this.#reaches.get(version)
+    if (!reach) {
+      reach = this.#search(version, this.#lastStart(version))
+      this.#reaches.set(version, reach)
+    }
+    return reach
+  }
+
+  #lastStart(version: number): number {
+    const { start } = this.counting.key
+    const { offset, operations } = this.members
+    let last = Number.NEGATIVE_INFINITY
+    for (let i = offset[version]; i < offset[version + 1]; i++) last = Math.max(last, start[operations[i]])
+    return last
+  }
+
+  /** The versions newer than `version` whose write began before `limit`. */
+  #search(version: number, limit: number): Reach {
+    const { found, writer, count } = this.versions
+    const { start } = this.counting.key
     const from = new Map<number, number>()
     const queue = [version]
     /** the chain of cas that leads to the version being searched from: directly one after the other */
     const chain = new Set<number>()
     const visit = (w: number, origin: number): void => {
       if (w === version || w === 0 || chain.has(w) || from.has(w) || from.size >= REACH_LIMIT) return
+      if (start[writer[w]] >= limit) return
       from.set(w, origin)
       queue.push(w)
     }
     // Per order, from which place on everything has been visited.
-    const searched = this.#orders.map((order) => order.size)
+    const stops = this.#orders.map((order) => order.stopAt(limit))
+    const searched = [...stops]
     const expanded = new Set<number>()
     for (let head = 0; head < queue.length && from.size < REACH_LIMIT; head++) {
       const origin = queue[head]
@@ -105,14 +127,17 @@ export class Newer {
       for (let v = origin; v >= 0 && !expanded.has(v); v = this.blamedCas[v] ? -1 : found[v]) {
         expanded.add(v)
         chain.add(v)
-        if (v === 0) for (let w = 1; w < count && from.size < REACH_LIMIT; w++) visit(w, origin)
+        if (v === 0) {
+          for (let w = 1; w < count && start[writer[w]] < limit && from.size < REACH_LIMIT; w++)
+            visit(w, origin)
+        }
         for (const w of this.#foundBy.get(v) ?? []) visit(w, origin)
         for (let o = 0; o < this.#orders.length; o++) {
           const order = this.#orders[o]
           const first = order.firstAfter(order.leastEndOf(v))
           // Along a chain its own members are passed over, so what was passed is not all visited.
           const isChain = v !== origin
-          for (let i = first; i < (isChain ? order.size : searched[o]); i++) {
+          for (let i = first; i < (isChain ? stops[o] : searched[o]); i++) {
             if (from.size >= REACH_LIMIT) break
             visit(order.unitAt(i), origin)
           }
@@ -120,9 +145,7 @@ export class Newer {
         }
       }
     }
-    const reach = { from }
-    this.#reaches.set(version, reach)
-    return reach
+    return { from }
   }
 
   /** The links that show `newer` to be newer than `version`, from the latter to the former. */
@@ -139,7 +162,9 @@ export class Newer {
 
   /** Whether W is newer than V. */
   isNewer(w: number, v: number): boolean {
-    return this.reach(v).from.has(w)
+    const began = this.counting.key.start[this.versions.writer[w]]
+    const reach = began < this.#lastStart(v) ? this.reach(v) : this.#search(v, began + 0.5)
+    return reach.from.has(w)
   }
 
   /** How much clock error a pair survives, in the key's own time; Infinity when no clock explains it. */
@@ -208,19 +233,23 @@ class SearchOrder {
     return this.#order.unit[this.#byStart[i]]
   }
 
-  /** How many entries there are. */
-  get size(): number {
-    return this.#byStart.length
+  /** Place of the first start at or after `time`; where the order tells places in a session, its end. */
+  stopAt(time: number): number {
+    return this.#order.inSession ? this.#byStart.length : this.#place((start) => start < time)
   }
 
   /** Place of the first start after `time`. */
   firstAfter(time: number): number {
+    return this.#place((start) => start <= time)
+  }
+
+  #place(isBefore: (start: number) => boolean): number {
     const { maxStart } = this.#order
     let low = 0
     let high = this.#byStart.length
     while (low < high) {
       const middle = (low + high) >> 1
-      if (maxStart[this.#byStart[middle]] <= time) low = middle + 1
+      if (isBefore(maxStart[this.#byStart[middle]])) low = middle + 1
       else high = middle
     }
     return low
