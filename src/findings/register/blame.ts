@@ -135,8 +135,10 @@ function weighOwnOperations(
   const { from } = newer.reach(version)
   const session = sessions.get(key.client[read])!
   let weighed = 0
+  const begin = newer.beginOf(version)
   for (let i = placeOf(session, read) - 1; i >= 0 && weighed < WEIGHED; i--) {
     const p = session[i]
+    if (key.end[p] < begin) break
     const written = versions.writeOf[p]
     if (written > 0 && from.has(written) && counts(counting, p, 'write', read, 'read')) {
       weigh.add({ newer: written, via: p, observedBy: undefined }, true)
@@ -155,8 +157,11 @@ function weighReads(newer: Newer, version: number, read: number, weigh: Weigher)
   const { from } = newer.reach(version)
   const unordered = new Map<number, boolean>()
   let weighed = 0
+  const { start } = counting.key
+  const begin = newer.beginOf(version) - newer.longestRead
   const last = Math.max(0, read - LOOK_BACK)
-  for (let q = read - 1; q >= last && weighed < WEIGHED; q--) {
+  // What ended before the version began cannot have seen anything newer.
+  for (let q = read - 1; q >= last && weighed < WEIGHED && start[q] >= begin; q--) {
     const w = versions.readOf[q]
     if (w < 0 || w === version || !sound[q] || !counts(counting, q, 'read', read, 'read')) continue
     if (from.has(w)) {

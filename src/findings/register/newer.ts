@@ -51,6 +51,8 @@ export class Newer {
   readonly members: Members
   /** local index → 1 for a read that is not wrong by itself */
   readonly sound: Uint8Array
+  /** the longest that a sound read took, in the key's own time */
+  readonly longestRead: number
   /** version → 1 where its own cas is blamed, which then says nothing about order */
   readonly blamedCas: Uint8Array
   readonly #orders: SearchOrder[]
@@ -66,7 +68,13 @@ export class Newer {
     this.sound = new Uint8Array(n)
     const readOf = versions.readOf.slice()
     for (const p of versions.wrongReads) readOf[p] = -1
-    for (let p = 0; p < n; p++) if (readOf[p] >= 0) this.sound[p] = 1
+    let longest = 0
+    for (let p = 0; p < n; p++) {
+      if (readOf[p] < 0) continue
+      this.sound[p] = 1
+      longest = Math.max(longest, counting.key.end[p] - counting.key.start[p])
+    }
+    this.longestRead = longest
     this.blamedCas = blamedCas ?? new Uint8Array(versions.count).fill(1)
     const identity = Int32Array.from({ length: versions.count }, (_, v) => v)
     const writesOnly = versionOrders(counting, { ...versions, readOf }, identity, true)
@@ -92,6 +100,16 @@ export class Newer {
       this.#reaches.set(version, reach)
     }
     return reach
+  }
+
+  /** When the first operation of a version began; -Infinity for the initial one. */
+  beginOf(version: number): number {
+    const { start } = this.counting.key
+    const { offset, operations } = this.members
+    if (version === 0) return Number.NEGATIVE_INFINITY
+    let first = Number.POSITIVE_INFINITY
+    for (let i = offset[version]; i < offset[version + 1]; i++) first = Math.min(first, start[operations[i]])
+    return first
   }
 
   #lastStart(version: number): number {

@@ -25,7 +25,8 @@ export function findReverted(newer: Newer, blame: Blame): Reverted | undefined {
   const { read, version } = blame
   const { from } = newer.reach(version)
   const last = Math.max(0, read - LOOK_BACK)
-  for (let q = read - 1; q >= last; q--) {
+  const begin = newer.beginOf(version) - newer.longestRead
+  for (let q = read - 1; q >= last && key.start[q] >= begin; q--) {
     const w = versions.readOf[q]
     if (w <= 0 || w === version || !sound[q] || !counts(counting, q, 'read', read, 'read')) continue
     const firstSeen = firstRead(newer, version, q)
