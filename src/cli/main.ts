@@ -80,6 +80,21 @@ export function buildProgram(terminal: Terminal, end: (status: ExitStatus) => vo
       const { runCompare } = await import('./compare.js')
       end(await runCompare(old, now, options, terminal))
     })
+  program
+    .command('convert')
+    .description('other logs into a history: CSV, NDJSON or OpenTelemetry spans (docs/convert.md)')
+    .argument('<file...>', 'logs, plain or .gz, or - for standard input')
+    .requiredOption('--mapping <file>', 'how their records become operations, YAML or JSON')
+    .option('--out <file>', 'history to write, packed where its name ends in .gz (default standard output)')
+    .option('--force', 'let --out write over a file that stands already')
+    .addHelpText(
+      'after',
+      '\nExample:\n  misread convert docs/convert/requests.csv --mapping docs/convert/requests.yaml --out drill.ndjson\n',
+    )
+    .action(async (files: string[], options) => {
+      const { runConvert } = await import('./convert.js')
+      end(await runConvert(files, options, terminal))
+    })
   return program
 }
 
