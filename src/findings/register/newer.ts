@@ -180,7 +180,10 @@ export class Newer {
 
   /** Whether W is newer than V. */
   isNewer(w: number, v: number): boolean {
-    const began = this.counting.key.start[this.versions.writer[w]]
+    const [later, earlier] = [this.versions.writer[w], this.versions.writer[v]]
+    if (later < 0 || v === w) return false
+    if (earlier < 0 || counts(this.counting, earlier, 'write', later, 'write')) return true
+    const began = this.counting.key.start[later]
     const reach = began < this.#lastStart(v) ? this.reach(v) : this.#search(v, began + 0.5)
     return reach.from.has(w)
   }
