@@ -26,6 +26,7 @@ import {
   revertedSentence,
   valueReturned,
 } from './sentences.js'
+import { Sift } from './sift.js'
 import { findTooFarBehind } from './too-far-behind.js'
 import { wrongReadFinding } from './wrong-reads.js'
 
@@ -342,7 +343,9 @@ function blameAll(newer: Newer, suspects: readonly number[]): Map<number, Blame>
     }
   }
   const blames = new Map<number, Blame>()
+  const sift = new Sift(newer)
   for (const read of reads.sort((a, b) => a - b)) {
+    if (!sift.mayBeBlamed(read)) continue
     const blame = blameRead(newer, sessions, read)
     if (blame) blames.set(read, blame)
   }
