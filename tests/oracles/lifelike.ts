@@ -68,7 +68,7 @@ export function lifelikeKey(
       const start = startOf(family, initial)
       answer(family, sent, start, by, bends)
       const operations = sent.map(({ record }) => record)
-      if (hosts !== 'moving') skew(sent, offsets, clockError)
+      skew(sent, offsets, clockError)
       const key: PlainKey = { operations: shuffleLines(operations, lines), clockError }
       if (initial === 'given') key.initial = start
       if (initial === 'unknown') key.initialUnknown = true
@@ -96,7 +96,8 @@ function send(drafts: readonly Draft[], hosts: Hosts, counts: boolean): Sent[] {
     // What makes a key a counter is an increment on it.
     const d = counts && i === 0 ? { ...drafted, kind: 4 } : drafted
     const c = d.client
-    const start = clock[c] + d.gap
+    // Room for clocks that differ, where a client changes between them.
+    const start = clock[c] + d.gap + (hosts === 'moving' && d.pick % 2 === 0 ? 4 : 0)
     const end = start + d.length
     clock[c] = end
     const record: PlainOperation = { client: names[c], op: 'read', key: 'k', start, end }
@@ -153,6 +154,9 @@ function answer(family: Family, sent: Sent[], start: unknown, by: number, bends:
       if (effect !== undefined) value = record.op === 'delete' ? null : record.value
     }
     known.push(value)
+    // What was only offered may be asked for as well, and be what a bent answer returns.
+    if (record.op === 'write' && record.outcome === 'refused') known.push(record.value)
+    if (record.op === 'cas' && record.applied === false) known.push(record.value)
     if (bent('lose', i)) value = before
   })
   bendAnswers(sent, known, bends, by)
@@ -217,16 +221,28 @@ function request(
   }
 }
 
-/** Stamps every operation by a clock that is off by no more than the clock error. */
+/**
+ * Stamps every operation by its host's clock, which is off by no more than the clock error; by true clocks where a
+ * client moves between hosts and would overlap with itself.
+ */
 function skew(sent: readonly Sent[], offsets: readonly number[], clockError: number): void {
   const own = new Map<string, number>()
-  for (const { record } of sent) {
+  const offs = sent.map(({ record }) => {
     const clock = record.host ?? `own ${record.client}`
     if (!own.has(clock)) own.set(clock, offsets[own.size % offsets.length])
-    const off = Math.max(-clockError, Math.min(clockError, own.get(clock)!))
-    record.start += off + 10
-    if (record.end !== undefined) record.end += off + 10
-  }
+    return Math.max(-clockError, Math.min(clockError, own.get(clock)!))
+  })
+  const lastEnd = new Map<string, number>()
+  const overlaps = sent.some(({ record }, i) => {
+    const before = lastEnd.get(record.client) ?? Number.NEGATIVE_INFINITY
+    lastEnd.set(record.client, (record.end ?? record.start) + offs[i])
+    return record.start + offs[i] < before
+  })
+  sent.forEach(({ record }, i) => {
+    const off = 10 + (overlaps ? 0 : offs[i])
+    record.start += off
+    if (record.end !== undefined) record.end += off
+  })
 }
 
 /** Lines in any order, each client's in its own. */
