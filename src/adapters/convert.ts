@@ -128,11 +128,11 @@ class State {
 }
 
 function emptyProblem(sources: readonly ByteSource[], { passedOver }: State): InputProblem {
-  const reasons = Array.from(passedOver, ([why, count]) => `${count} spans ${why}`)
+  const reasons = Array.from(passedOver, ([why, count]) => `${count} ${why}`)
   return {
     code: 'empty-history',
     file: sources.map(({ name }) => name).join(', '),
-    found: `no operations${reasons.length === 0 ? '' : ` (passed over: ${reasons.join(', ')})`}`,
+    found: `no operations${reasons.length === 0 ? '' : ` (spans passed over: ${reasons.join(', ')})`}`,
     expected: 'at least one record that is an operation',
     advice: 'check the rules that pass records over (skip, marks, otlp)',
   }

@@ -1,20 +1,18 @@
 /**
  * Records of a CSV file (RFC 4180, with other delimiters and quotes where the mapping says so).
  */
-import { Readable } from 'node:stream'
-import { CsvError, type Info, parse } from 'csv-parse'
+import { type CsvError, parse } from 'csv-parse'
 import type { InputProblem } from '../history/problems.js'
 import type { ByteSource } from '../history/source.js'
 import { didYouMean } from '../promises/nearest.js'
 import { type JsonNode, stringNode } from './json-node.js'
 import type { Mapping } from './mapping-file.js'
+import { RecordLines } from './record-lines.js'
 import type { Field, Row, RowVisitor } from './rows.js'
 import type { FieldUse } from './sources.js'
 import { textChunks } from './text-chunks.js'
 import { quoted } from './trouble.js'
 
-/** Rows between two pauses. */
-const PAUSE = 4096
 /** Longest record, in bytes. */
 const RECORD_LIMIT = 16 * 1024 * 1024
 
@@ -29,27 +27,16 @@ export async function readCsv(
   visitor: RowVisitor,
 ): Promise<void> {
   const { delimiter = ',', quote = '"', comment, columns: named } = mapping.spec.csv ?? {}
-  const parser = parse({
-    delimiter,
-    quote,
-    ...(comment === undefined ? {} : { comment, comment_no_infix: true }),
-    info: true,
-    raw: true,
-    relax_column_count: true,
-    skip_empty_lines: true,
-    max_record_size: RECORD_LIMIT,
-  })
-  const text = Readable.from(textChunks(source))
-  text.on('error', (error) => parser.destroy(error))
-  text.pipe(parser)
+  const lines = new RecordLines(comment)
   let columns: Columns | undefined
+  let isWanted = true
   const take = (cells: readonly string[], line: number): boolean => {
     if (columns && cells.length === columns.names.length) return visitor.row(new CsvRow(columns, cells, line))
     return visitor.problem({
       code: 'wrong-cells',
       file: source.name,
       line,
-      found: `${cells.length} cells`,
+      found: `${cells.length} ${cells.length === 1 ? 'cell' : 'cells'}`,
       expected: `${columns?.names.length}, as many as columns`,
       advice: 'check quotes and the delimiter (csv: delimiter)',
     })
@@ -62,39 +49,62 @@ export async function readCsv(
     return problems.length === 0
   }
   if (named && !learn(named, 1)) return
-  let count = 0
+  const parser = parse({
+    delimiter,
+    quote,
+    ...(comment === undefined ? {} : { comment, comment_no_infix: true }),
+    relax_column_count: true,
+    skip_empty_lines: true,
+    max_record_size: RECORD_LIMIT,
+    // Called within `write`, so that no row is lost where a later one is malformed.
+    on_record(cells: string[], { bytes }) {
+      const line = lines.take(bytes)
+      if (isWanted) isWanted = columns ? take(cells, line) : learn(cells, line)
+      return null
+    },
+  })
+  const failed = new Promise<CsvError>((resolve) => parser.once('error', resolve))
   try {
-    for await (const { record, info, raw } of parser as AsyncIterable<Parsed>) {
-      // The reader counts to the record's last line.
-      const line = info.lines - newlines(raw)
-      if (!(columns ? take(record, line) : learn(record, line))) return
-      if (++count % PAUSE === 0) await visitor.pause()
+    for await (const text of textChunks(source)) {
+      const bytes = Buffer.from(text)
+      lines.feed(bytes)
+      await new Promise<void>((resolve) => parser.write(bytes, () => resolve()))
+      if (parser.errored || !isWanted) break
+      await visitor.pause()
     }
-  } catch (error) {
-    if (!(error instanceof CsvError)) throw error
+    if (!isWanted) return
+    if (!parser.errored) {
+      parser.resume()
+      await Promise.race([failed, new Promise((resolve) => parser.end(resolve))])
+    }
+    if (!parser.errored) return
+    const { code, message } = await failed
+    const { found, expected } = TROUBLES[code] ?? { found: message, expected: 'CSV by RFC 4180' }
     visitor.problem({
       code: 'bad-csv',
       file: source.name,
-      line: Number((error as { lines?: number }).lines ?? 1),
-      found: error.message.replace(/^[^:]*: /, '').replace(/ at line .*/, ''),
-      expected: 'CSV by RFC 4180',
+      line: lines.open,
+      found,
+      expected,
       advice: 'check quotes and the delimiter (csv: delimiter, quote)',
     })
   } finally {
-    text.destroy()
     parser.destroy()
   }
 }
 
-interface Parsed {
-  readonly record: string[]
-  readonly info: Info
-  readonly raw: string
-}
-
-/** Line ends inside a record, whose own may stand at its end. */
-function newlines(raw: string): number {
-  return raw.replace(/^[\r\n]+|[\r\n]+$/g, '').split(/\r\n|\n|\r/).length - 1
+/** What the parser stumbles over, in the record that begins on the line told. */
+const TROUBLES: Partial<Record<string, { found: string; expected: string }>> = {
+  CSV_QUOTE_NOT_CLOSED: { found: 'a quote that is never closed', expected: 'its end' },
+  INVALID_OPENING_QUOTE: {
+    found: 'a quote inside a cell that does not begin with one',
+    expected: 'the whole cell in quotes, and quotes in it doubled',
+  },
+  CSV_INVALID_CLOSING_QUOTE: {
+    found: 'text after a quote that closes a cell',
+    expected: 'the delimiter or the end of the line; quotes in a cell are doubled',
+  },
+  CSV_MAX_RECORD_SIZE: { found: 'a record of over 16 MiB', expected: 'records of at most 16 MiB' },
 }
 
 function headProblems(

@@ -14,27 +14,47 @@ export class YamlTrouble extends Error {
   }
 }
 
-/** The value of a node. Throws YamlTrouble for a number that JSON writes otherwise. */
-export function exactJson(document: Document, node: Node | null | undefined): JsonNode {
-  const found = resolved(document, node)
-  if (!found) return NULL
-  if (isMap(found)) {
-    const members = found.items.map(
-      ({ key, value }) => [nameOf(document, key as Node), exactJson(document, value as Node | null)] as const,
-    )
-    return { kind: 'object', members: new Map(members) }
+/** Deeper, or larger once its aliases are followed, no mapping has a reason to be. */
+const DEPTH_LIMIT = 100
+const NODE_LIMIT = 100_000
+
+/**
+ * The value of a node. Throws YamlTrouble for a number that JSON writes otherwise, an alias of nothing, and what
+ * aliases make endless.
+ */
+export function exactJson(document: Document, root: Node | null): JsonNode {
+  let count = 0
+  const value = (node: Node | null, depth: number): JsonNode => {
+    const found = resolved(document, node)
+    if (!found) {
+      if (isAlias(node)) throw new YamlTrouble(node, 'the name of an anchor before it')
+      return NULL
+    }
+    if (++count > NODE_LIMIT || depth > DEPTH_LIMIT)
+      throw new YamlTrouble(node!, 'a mapping of sane size and depth')
+    if (isMap(found)) {
+      const members = found.items.map(
+        (pair) => [nameOf(document, pair.key as Node), value(pair.value as Node | null, depth + 1)] as const,
+      )
+      return { kind: 'object', members: new Map(members) }
+    }
+    if (isSeq(found))
+      return { kind: 'array', items: found.items.map((item) => value(item as Node | null, depth + 1)) }
+    return scalar(found)
   }
-  if (isSeq(found))
-    return { kind: 'array', items: found.items.map((item) => exactJson(document, item as Node | null)) }
-  if (!isScalar(found)) throw new YamlTrouble(found, 'a value')
-  const { value } = found
+  return value(root, 0)
+}
+
+function scalar(node: Node): JsonNode {
+  if (!isScalar(node)) throw new YamlTrouble(node, 'a value')
+  const { value } = node
   if (value === null) return NULL
   if (typeof value === 'string') return { kind: 'string', text: value }
   if (typeof value === 'boolean') return { kind: 'boolean', text: value ? 'true' : 'false' }
   try {
-    return parseJson(found.source ?? String(value))
+    return parseJson(node.source ?? String(value))
   } catch {
-    throw new YamlTrouble(found, 'a number as JSON writes it, such as 17 or -0.5')
+    throw new YamlTrouble(node, 'a number as JSON writes it, such as 17 or -0.5')
   }
 }
 

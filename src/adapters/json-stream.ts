@@ -118,14 +118,23 @@ export class JsonStream {
         if (scan.isWord) break
         throw this.#trouble('the end of the value')
       }
-      if (scan.length > VALUE_LIMIT)
-        throw new StreamTrouble(this.#line, 'a value of over 16 Mi characters', 'spans of a sane size')
+      this.#limit(scan.length)
       yield
     }
+    this.#limit(scan.length)
     const text = this.#text.slice(this.#at, this.#at + scan.length)
     this.#at += scan.length
     for (let at = text.indexOf('\n'); at >= 0; at = text.indexOf('\n', at + 1)) this.#line++
     return text
+  }
+
+  #limit(length: number): void {
+    if (length <= VALUE_LIMIT) return
+    throw new StreamTrouble(
+      this.#line,
+      'a value of over 16 Mi characters',
+      'values of at most so many: spans stand one by one in a document',
+    )
   }
 
   *#expect(c: string, expected: string): Waiting<void> {

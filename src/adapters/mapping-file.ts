@@ -124,21 +124,26 @@ type Schema = { [name: string]: unknown }
 
 /** The members that may stand at a path, from the published schema. */
 function namesAt(path: readonly PropertyKey[]): string[] {
-  let schemas = options(z.toJSONSchema(mappingSchema, { io: 'input' }) as Schema)
+  const root = z.toJSONSchema(mappingSchema, { io: 'input' }) as Schema
+  let schemas = branches(root, root)
   for (const part of path) {
     schemas = schemas.flatMap(({ properties, items, additionalProperties }) => {
       const next =
         typeof part === 'number'
           ? items
           : ((properties as Schema | undefined)?.[String(part)] ?? additionalProperties)
-      return typeof next === 'object' && next !== null ? options(next as Schema) : []
+      return typeof next === 'object' && next !== null ? branches(next as Schema, root) : []
     })
   }
   return [...new Set(schemas.flatMap(({ properties }) => Object.keys((properties ?? {}) as Schema)))]
 }
 
-function options(schema: Schema): Schema[] {
-  return Array.isArray(schema.anyOf) ? (schema.anyOf as Schema[]).flatMap(options) : [schema]
+/** The schemas that a schema stands for: those of a union, and the one that it refers to. */
+function branches(schema: Schema, root: Schema): Schema[] {
+  if (Array.isArray(schema.anyOf)) return (schema.anyOf as Schema[]).flatMap((each) => branches(each, root))
+  if (typeof schema.$ref !== 'string') return [schema]
+  const name = schema.$ref.replace('#/$defs/', '')
+  return branches((root.$defs as Schema)[name] as Schema, root)
 }
 
 function plain(node: JsonNode): unknown {

@@ -27,14 +27,14 @@ const sourceObject = z.strictObject({
   translate: z.record(z.string(), json).exactOptional().describe('what is found, and what it stands for'),
   as: z.enum(['unchanged', 'string', 'number', 'json']).exactOptional(),
   empty: z
-    .enum(['null', 'text', 'missing'])
+    .union([z.null(), z.enum(['text', 'missing'])])
     .exactOptional()
     .describe('what an empty cell of a CSV file means: absence, the empty text, nothing said'),
   default: json.exactOptional().describe('where nothing is there'),
 })
 
 /** Where something comes from. A bare text is a field, with {…} in it a template. */
-export const sourceSchema = z.union([z.string().min(1), sourceObject])
+const sourceSchema = z.union([z.string().min(1), sourceObject]).meta({ id: 'source' })
 
 const clientSchema = z.union([
   z.string().min(1),
@@ -46,28 +46,25 @@ const clientSchema = z.union([
   }),
 ])
 
+const ofOneKind = sourceSchema.exactOptional()
 const valueSchema = z.union([
   z.string().min(1),
-  sourceObject,
-  z.strictObject({
-    read: sourceSchema.exactOptional(),
-    write: sourceSchema.exactOptional(),
-    increment: sourceSchema.exactOptional(),
-    cas: sourceSchema.exactOptional(),
-  }),
+  sourceObject.extend({ read: ofOneKind, write: ofOneKind, increment: ofOneKind, cas: ofOneKind }),
 ])
 
 const unit = z.enum(['ns', 'us', 'ms', 's', 'iso']).describe('iso: timestamps by RFC 3339')
-const timeSchema = z.union([
-  z.string().min(1),
-  sourceObject.extend({
-    unit: unit.exactOptional(),
-    round: z
-      .boolean()
-      .exactOptional()
-      .describe('take times finer than a nanosecond, rounded so that the request lasts no shorter'),
-  }),
-])
+const timeSchema = z
+  .union([
+    z.string().min(1),
+    sourceObject.extend({
+      unit: unit.exactOptional(),
+      round: z
+        .boolean()
+        .exactOptional()
+        .describe('take times finer than a nanosecond, rounded so that the request lasts no shorter'),
+    }),
+  ])
+  .meta({ id: 'time' })
 
 /** What a condition asks of a record; all that is named must hold. */
 const test = {
@@ -77,7 +74,7 @@ const test = {
   matches: pattern.exactOptional(),
   present: z.boolean().exactOptional().describe('whether the field is there, not null and not empty'),
 }
-const conditionSchema = z.strictObject(test)
+const conditionSchema = z.strictObject(test).meta({ id: 'condition' })
 const all = z.array(conditionSchema).min(1).exactOptional().describe('conditions that must hold all')
 const outcome = z.enum(['acked', 'refused', 'unsure'])
 

@@ -119,7 +119,12 @@ export function makePlan(mapping: Mapping): Plan {
     if (spec[name] && spec.format !== name)
       compilation.refuse([name], `${name}: in a mapping of ${spec.format}`, `no ${name}:`)
   }
-  if (spec.place !== undefined) refuseKnown(compilation, ['place'], spec.place)
+  if (spec.place !== undefined) {
+    refuseKnown(compilation, ['place'], spec.place)
+    const names = plan.keepAll ? ['source'] : []
+    if ([...names, ...plan.keep.map(({ name }) => name)].includes(spec.place))
+      compilation.refuse(['place'], JSON.stringify(spec.place), 'a name that nothing else is kept by')
+  }
   if (problems.length > 0) throw new InputError(problems.slice(0, PROBLEM_LIMIT))
   return plan
 }
@@ -144,25 +149,25 @@ function headerLine({ mapping, refuse }: Compilation): string {
   return `{${members.join(',')}}\n`
 }
 
+const VALUE_OPS = ['read', 'write', 'increment', 'cas'] as const
+
 /** A source for all kinds is that of reads, writes and cas: what an increment returned has to be named as such. */
 function compileValues(compilation: Compilation): Plan['values'] {
   const { value } = compilation.mapping.spec
   if (value === undefined) return {}
-  const ops = ['read', 'write', 'increment', 'cas'] as const
-  if (typeof value === 'object' && !isSource(value)) {
-    const given = ops.filter((op) => value[op] !== undefined)
-    if (given.length === 0)
-      compilation.refuse(['value'], 'no field', 'a field, or one each for read, write, increment and cas')
-    return Object.fromEntries(given.map((op) => [op, compileSource(compilation, value[op]!, ['value', op])]))
+  const given = typeof value === 'object' ? VALUE_OPS.filter((op) => value[op] !== undefined) : []
+  if (typeof value === 'string' || given.length === 0) {
+    const source = compileSource(compilation, value, ['value'])
+    return { read: source, write: source, cas: source }
   }
-  const source = compileSource(compilation, value as SourceSpec, ['value'])
-  return { read: source, write: source, cas: source }
-}
-
-function isSource(value: object): value is Exclude<SourceSpec, string> {
-  return ['field', 'template', 'constant', 'match', 'translate', 'as', 'empty', 'default'].some(
-    (name) => name in value,
-  )
+  const other = Object.keys(value).filter((name) => !VALUE_OPS.some((op) => op === name))
+  if (other.length > 0)
+    compilation.refuse(
+      ['value', other[0]],
+      `${other[0]} beside ${given.join(', ')}`,
+      'one source for all, or one each for read, write, increment and cas',
+    )
+  return Object.fromEntries(given.map((op) => [op, compileSource(compilation, value[op]!, ['value', op])]))
 }
 
 function timesOf(

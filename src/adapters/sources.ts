@@ -77,7 +77,7 @@ export function compileSource(
   const empty =
     spec.empty === undefined || spec.empty === 'missing'
       ? undefined
-      : spec.empty === 'null'
+      : spec.empty === null
         ? exactNull
         : stringNode('')
   const otherwise = exactAt(mapping, [...path, 'default'])

@@ -84,7 +84,7 @@ function summary(conversion: Conversion): string {
   const total = Object.values(operations).reduce((sum, count) => sum + count, 0)
   lines.push(`${counted(total, 'operation')} (${listed(operations)}; ${listed(outcomes)})`)
   if (marks > 0) lines[lines.length - 1] += `, ${counted(marks, 'mark')}`
-  if (skipped > 0) lines.push(`${counted(skipped, 'record')} passed over by the mapping's skip`)
+  if (skipped > 0) lines.push(`${counted(skipped, 'record')} passed over by a rule of the mapping (skip)`)
   for (const [why, count] of passedOver) lines.push(`${counted(count, 'span')} passed over: ${why}`)
   if (noRule > 0) lines.push(`${counted(noRule, 'operation')} that no outcome rule fits: taken as unsure`)
   if (noEnd > 0)

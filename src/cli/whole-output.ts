@@ -62,7 +62,15 @@ export class WholeOutput {
   async write(text: string): Promise<void> {
     if (this.#error) throw cannotWrite(this.#path, this.#error)
     if (this.#into.write(text)) return
-    await Promise.race([once(this.#into, 'drain'), once(this.#file, 'error')]).catch(() => {})
+    await new Promise<void>((resolve) => {
+      const go = (): void => {
+        this.#into.off('drain', go)
+        this.#file.off('error', go)
+        resolve()
+      }
+      this.#into.on('drain', go)
+      this.#file.on('error', go)
+    })
     if (this.#error) throw cannotWrite(this.#path, this.#error)
   }
 

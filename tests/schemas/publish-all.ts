@@ -2,6 +2,7 @@
 import { comparisonPublication } from './comparison-publication.js'
 import { dumpPublication } from './dump-publication.js'
 import { historyPublication } from './history-publication.js'
+import { mappingPublication } from './mapping-publication.js'
 import { publish } from './publish.js'
 import { resultPublication } from './result-publication.js'
 import { surveyPublication } from './survey-publication.js'
@@ -10,6 +11,7 @@ for (const publication of [
   comparisonPublication,
   dumpPublication,
   historyPublication,
+  mappingPublication,
   resultPublication,
   surveyPublication,
 ])

@@ -2,15 +2,20 @@ import { describe, expect, it } from 'vitest'
 import { comparisonPublication } from './comparison-publication.js'
 import { dumpPublication } from './dump-publication.js'
 import { historyPublication } from './history-publication.js'
+import { mappingPublication } from './mapping-publication.js'
 import { published, schemaText } from './publish.js'
 import { resultPublication } from './result-publication.js'
 import { surveyPublication } from './survey-publication.js'
 
 describe('the published JSON Schemas', () => {
-  it.each([comparisonPublication, dumpPublication, historyPublication, resultPublication, surveyPublication])(
-    '$file is what the code defines',
-    (publication) => {
-      expect(published(publication), 'run npm run schemas').toBe(schemaText(publication))
-    },
-  )
+  it.each([
+    comparisonPublication,
+    dumpPublication,
+    historyPublication,
+    mappingPublication,
+    resultPublication,
+    surveyPublication,
+  ])('$file is what the code defines', (publication) => {
+    expect(published(publication), 'run npm run schemas').toBe(schemaText(publication))
+  })
 })
