@@ -6,11 +6,14 @@ import { countPairs } from '../order/counting.js'
 import type { KeyHistory } from '../order/key-history.js'
 import { isUntested } from '../order/untested.js'
 import type { PairRule } from '../promises/promise.js'
+import { isBrokenWithoutAbsence, mayHaveBegunAbsent } from './absent-start.js'
 import { decideCounter } from './counter.js'
 import type { Decision } from './decision.js'
 import { findLostUpdates } from './lost-updates.js'
 import { ambiguityReason, decideRegister } from './register.js'
 import { readsTooFarBehind } from './version-bound.js'
+
+const UNKNOWN_START = 'the start is not known: a read of absence could have seen it, or what a delete left'
 
 /** register: no increments; counter: increments and reads only; mixed: increments with writes, cas or deletes. */
 export type KeyKind = 'register' | 'counter' | 'mixed'
@@ -35,12 +38,19 @@ export function decideKey(key: KeyHistory, values: Values, rule: PairRule): Deci
   switch (kindOfKey(key)) {
     case 'register': {
       const outcome = decideRegister(counting)
-      if (outcome.verdict === 'broken') return { verdict: 'broken' }
+      if (outcome.verdict === 'broken') {
+        return mayHaveBegunAbsent(key, outcome.versions) &&
+          !isBrokenWithoutAbsence(key, (rest) => decideKey(rest, values, rule).verdict === 'broken')
+          ? { verdict: 'undecided', reason: UNKNOWN_START }
+          : { verdict: 'broken' }
+      }
       if (outcome.verdict === 'ambiguous') {
         return { verdict: 'undecided', reason: ambiguityReason(counting, outcome.versions) }
       }
       if (bound !== undefined && readsTooFarBehind(counting, outcome.versions, bound).length > 0) {
-        return { verdict: 'broken' }
+        return mayHaveBegunAbsent(key, outcome.versions)
+          ? { verdict: 'undecided', reason: UNKNOWN_START }
+          : { verdict: 'broken' }
       }
       return { verdict: 'holds', untested: isUntested(counting) }
     }

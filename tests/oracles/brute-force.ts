@@ -103,7 +103,8 @@ function initials(
   const unwritten = [...new Set(found.map(returned))].filter(
     (t): t is string => t !== undefined && !written.has(t) && !offered.has(t),
   )
-  return [...unwritten.map((t) => JSON.parse(t)), { nobody: 'knows' }]
+  // Absence is not a value that anybody chooses: a delete later on does not show that it was not there before.
+  return [...unwritten.map((t) => JSON.parse(t)), null, { nobody: 'knows' }]
 }
 
 /** The text of what a register read returned, undefined where it does not say. */

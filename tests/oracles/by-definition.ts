@@ -126,7 +126,8 @@ function possibleStarts(key: PlainKey, kind: Kind, all: readonly Operation[]): u
     const counts = Array.from({ length: Math.max(...seen) + reach - least + 1 }, (_, i) => least + i)
     return kind === 'counter' ? counts : [...counts, ...others, { plays: 'no part' }]
   }
-  // The one value that was found and that nobody wrote or offered; else a value that plays no part.
+  // The one value that was found and that nobody wrote or offered, absence (deletes may write it too), or a value
+  // that plays no part.
   const text = (value: unknown): string => JSON.stringify(value ?? null)
   const given = new Set(
     all.filter(({ op }) => op !== 'read').map(({ op, value }) => text(op === 'delete' ? null : value)),
@@ -136,5 +137,5 @@ function possibleStarts(key: PlainKey, kind: Kind, all: readonly Operation[]): u
     if (op.op !== 'cas') return []
     return op.acked && op.applied === false ? (op.saw === undefined ? [] : [op.saw]) : [op.expect]
   })
-  return [...found.filter((value) => !given.has(text(value))), { plays: 'no part' }]
+  return [...found.filter((value) => !given.has(text(value))), null, { plays: 'no part' }]
 }
