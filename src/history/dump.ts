@@ -140,7 +140,7 @@ class DumpReader {
       this.#push(key, this.#builder.values.internText(canonicalText(scanner.raw(F.value))), line)
     } catch (error) {
       if (!(error instanceof ValueTrouble)) throw error
-      return this.refuse(line, error.message, 'a value whose members are all different')
+      return this.refuse(line, `${error.message} in value`, error.expected)
     }
     return true
   }

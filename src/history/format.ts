@@ -9,7 +9,12 @@ const json = z.json()
 const time = z.union([z.number(), z.string().regex(/^-?(0|[1-9][0-9]*)(\.[0-9]+)?([eE][+-]?[0-9]+)?$/)])
 const outcome = z.enum(['acked', 'refused', 'unsure'])
 
+/** A field of another kind of record, which would make the line one of that kind. */
+const otherKind = z.never().exactOptional()
+
 export const headerSchema = z.looseObject({
+  op: otherKind,
+  mark: otherKind,
   history: z.literal(1).describe('format version'),
   title: z.string().exactOptional(),
   unit: z.enum(['ns', 'us', 'ms', 's']).exactOptional().describe('of every time in this file; default ns'),
@@ -42,7 +47,7 @@ export const writeSchema = z.looseObject({
 export const incrementSchema = z.looseObject({
   ...common,
   op: z.literal('increment'),
-  by: z.number().exactOptional().describe('a whole number; default 1'),
+  by: z.number().multipleOf(1).exactOptional().describe('a whole number; default 1'),
   value: json.exactOptional().describe('the count after it, where the store returns it'),
 })
 export const casSchema = z.looseObject({
@@ -55,15 +60,26 @@ export const casSchema = z.looseObject({
 })
 export const deleteSchema = z.looseObject({ ...common, op: z.literal('delete') })
 
-export const operationSchema = z.discriminatedUnion('op', [
-  readSchema,
-  writeSchema,
-  incrementSchema,
-  casSchema,
-  deleteSchema,
-])
+export const operationSchema = z
+  .discriminatedUnion('op', [readSchema, writeSchema, incrementSchema, casSchema, deleteSchema])
+  .refine(({ end, outcome }) => (end ?? null) !== null || outcome === undefined || outcome === 'unsure', {
+    path: ['outcome'],
+    error: '"unsure" or no outcome where the request has no end',
+  })
+  .refine(
+    (record) =>
+      record.op !== 'read' ||
+      record.value !== undefined ||
+      (record.end ?? null) === null ||
+      (record.outcome ?? 'acked') !== 'acked',
+    { path: ['value'], error: 'the value that the read returned, null when the key was absent' },
+  )
 
 export const closeSchema = z.looseObject({
+  op: otherKind,
+  mark: otherKind,
+  history: otherKind,
+  start: otherKind,
   id: z.string(),
   end: time,
   outcome: outcome.exactOptional(),
@@ -73,6 +89,7 @@ export const closeSchema = z.looseObject({
 })
 
 export const markSchema = z.looseObject({
+  op: otherKind,
   mark: z.string(),
   start: time,
   end: time.nullable().exactOptional(),

@@ -3,7 +3,7 @@
  */
 import type { History, Mark } from './columns.js'
 import { readDump } from './dump.js'
-import { visitLines } from './lines.js'
+import { type LineVisitor, visitLines } from './lines.js'
 import { InputError, type InputProblem, PROBLEM_LIMIT } from './problems.js'
 import { type Place, RecordReader } from './record-reader.js'
 import type { ByteSource } from './source.js'
@@ -38,7 +38,7 @@ export async function readHistory(
   return history
 }
 
-/** Reads on past what is wrong, leaving it out, for looking at a recording. Throws only for unreadable files. */
+/** Reads on past what is wrong, leaving it out, for looking at a recording. A file that breaks off is a problem too. */
 export async function readTolerantly(
   sources: readonly ByteSource[],
   options: ReadOptions = {},
@@ -69,8 +69,9 @@ async function readAll(
   }
   const history = finish(reader)
   if (!problems.isFull) {
-    checkSessions(history, (problem) => problems.add(problem))
-    checkCounterValues(history, reader.headers.initial, (problem) => problems.add(problem))
+    const report = (make: () => InputProblem): void => problems.addMade(make)
+    checkSessions(history, report)
+    checkCounterValues(history, reader.headers.initial, report)
   }
   if (history.count === 0 && problems.count === 0) {
     problems.add({
@@ -94,56 +95,65 @@ async function readFile(
   const { builder, scanner } = reader
   builder.files.push({ name: source.name, bytes: 0, unitNs: 1n, firstOperation: builder.count })
   let bytesRead = 0
-  await visitLines(
-    source,
-    {
-      line(bytes, from, to, line, terminated) {
-        if (isBlank(bytes, from, to)) return true
-        if (scanner.scan(bytes, from, to)) {
-          place.line = line
-          place.lineStart = from
-          const problem = reader.read(place)
-          place.first = false
-          if (problem) problems.add(problem)
-          return !problems.isFull
-        }
-        if (!terminated) {
-          builder.warnings.push({
-            code: 'torn-last-line',
-            file: source.name,
-            line,
-            text: 'the last line is cut short and has no line end, as after a crash: it is set aside',
-          })
-          return true
-        }
+  /** lines read whole */
+  let lines = 0
+  const visitor: LineVisitor = {
+    line(bytes, from, to, line, terminated) {
+      lines = line
+      if (isBlank(bytes, from, to)) return true
+      if (scanner.scan(bytes, from, to)) {
+        place.line = line
+        place.lineStart = from
+        const problem = reader.read(place)
         place.first = false
-        const { code, at, expected } = scanner.failure
-        problems.add({
-          code,
+        if (problem) problems.add(problem)
+        return !problems.isFull
+      }
+      place.first = false
+      const { code, at, expected } = scanner.failure
+      if (!terminated && !isWholeJson(bytes, from, to)) {
+        builder.warnings.push({
+          code: 'torn-last-line',
           file: source.name,
           line,
-          column: at - from + 1,
-          found: foundAt(bytes, at, to),
-          expected,
+          text: 'the last line is cut short and has no line end, as after a crash: it is set aside',
         })
-        return !problems.isFull
-      },
-      tooLong(line) {
-        problems.add({
-          code: 'line-too-long',
-          file: source.name,
-          line,
-          found: 'a line of over 16 MiB',
-          expected: 'one record a line, of at most 16 MiB',
-        })
-        return !problems.isFull
-      },
+        return true
+      }
+      problems.add({
+        code,
+        file: source.name,
+        line,
+        column: at - from + 1,
+        found: foundAt(bytes, at, to),
+        expected,
+      })
+      return !problems.isFull
     },
-    (n) => {
+    tooLong(line) {
+      lines = line
+      place.first = false
+      problems.add({
+        code: 'line-too-long',
+        file: source.name,
+        line,
+        found: 'a line of over 16 MiB',
+        expected: 'one record a line, of at most 16 MiB',
+      })
+      return !problems.isFull
+    },
+  }
+  try {
+    await visitLines(source, visitor, (n) => {
       bytesRead += n
       onBytes(n)
-    },
-  )
+    })
+  } catch (error) {
+    // What was read before it broke off counts, and so do the problems in it.
+    if (!(error instanceof InputError)) throw error
+    for (const problem of error.problems)
+      problems.add(bytesRead > 0 ? { ...problem, line: lines + 1 } : problem)
+  }
   const { name, firstOperation } = builder.files[file]
   builder.files[file] = { name, bytes: bytesRead, unitNs: unitNs(place.unit), firstOperation }
   return bytesRead
@@ -154,7 +164,7 @@ function finish({ builder, headers }: RecordReader): History {
   const initial = new Map<number, number>()
   if (headers.initial.size > 0) {
     for (let key = 0; key < builder.keys.size; key++) {
-      const value = headers.initial.get(builder.keys.name(key))
+      const value = headers.initial.get(builder.keys.name(key))?.value
       if (value !== undefined) initial.set(key, value)
     }
   }
@@ -191,8 +201,13 @@ class Problems {
   }
 
   add(problem: InputProblem): void {
+    this.addMade(() => problem)
+  }
+
+  /** Counts a problem, and makes it only if it is kept. */
+  addMade(make: () => InputProblem): void {
     this.count++
-    if (this.#kept.length < PROBLEM_LIMIT) this.#kept.push(problem)
+    if (this.#kept.length < PROBLEM_LIMIT) this.#kept.push(make())
   }
 
   sorted(): InputProblem[] {
@@ -207,6 +222,16 @@ function isBlank(bytes: Uint8Array, from: number, to: number): boolean {
   for (let i = from; i < to; i++)
     if (bytes[i] !== 0x20 && bytes[i] !== 0x09 && bytes[i] !== 0x0d) return false
   return true
+}
+
+/** Whether JSON that is no good record is JSON all the same: then it was not cut short. */
+function isWholeJson(bytes: Uint8Array, from: number, to: number): boolean {
+  try {
+    JSON.parse(new TextDecoder().decode(bytes.subarray(from, to)))
+    return true
+  } catch {
+    return false
+  }
 }
 
 function foundAt(bytes: Uint8Array, at: number, to: number): string {

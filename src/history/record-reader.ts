@@ -17,6 +17,7 @@ import {
   UNSURE,
   WRITE,
 } from './columns.js'
+import { WRITTEN_OUT } from './decimal.js'
 import { Headers } from './headers.js'
 import { objectMembers } from './object-members.js'
 import type { InputProblem } from './problems.js'
@@ -140,7 +141,10 @@ export class RecordReader {
     const initialUnknown = this.#optionalBoolean('initialUnknown')
     const initial = this.#initial()
     place.unit = unit ?? 'ns'
-    const contradiction = this.headers.add({ title, clockErrorNs: clockError, initialUnknown, initial })
+    const contradiction = this.headers.add(
+      { title, clockErrorNs: clockError, initialUnknown, initial },
+      { file: place.fileName, line: place.line },
+    )
     if (contradiction) {
       throw new Refusal(
         'contradicting-headers',
@@ -364,9 +368,13 @@ export class RecordReader {
     const type = scanner.type[f]
     if (type === ABSENT) throw this.#missingOrWrong(field, expected)
     if (type === NULL) return NULL_VALUE
-    if (scanner.special[f] === 0 && type !== OBJECT && type < OBJECT) {
+    if (scanner.special[f] === 0 && type < OBJECT) {
       const quote = type === STRING ? 1 : 0
-      return builder.values.internBytes(scanner.bytes, scanner.from[f] - quote, scanner.to[f] + quote)
+      const from = scanner.from[f] - quote
+      const to = scanner.to[f] + quote
+      // Longer numbers have another canonical spelling.
+      if (type !== NUMBER || to - from <= WRITTEN_OUT)
+        return builder.values.internBytes(scanner.bytes, from, to)
     }
     return builder.values.internText(this.#canonical(field))
   }
@@ -376,12 +384,7 @@ export class RecordReader {
       return canonicalText(this.scanner.raw(F[field]))
     } catch (error) {
       if (!(error instanceof ValueTrouble)) throw error
-      throw new Refusal(
-        'ill-typed-field',
-        this.#at(field),
-        error.message,
-        'a value whose members are all different and whose numbers are of sane size',
-      )
+      throw new Refusal(error.code, this.#at(field), `${error.message} in ${field}`, error.expected)
     }
   }
 

@@ -61,6 +61,9 @@ export const TYPE_NAMES = [
 /** Deepest nesting that is read. */
 export const DEPTH_LIMIT = 512
 
+/** Unknown names of a record that are compared one by one. */
+const FEW = 8
+
 /** Why a line is no record. `at` is a byte offset in the scanned array. */
 export interface ScanFailure {
   readonly code: 'not-json' | 'duplicate-member' | 'too-deep' | 'nul-byte' | 'invalid-utf-8'
@@ -99,7 +102,12 @@ export class RecordScanner {
   #member = 0
   /** place of a member in its record → the field that stood there last */
   readonly #order = new Int32Array(16).fill(-1)
-  readonly #unknown: string[] = []
+  /** names that the format does not know, none with an escape, until `#unknownNames` takes over */
+  readonly #unknownFrom = new Int32Array(FEW)
+  readonly #unknownTo = new Int32Array(FEW)
+  #unknown = 0
+  /** all of them, where there are many or one has an escape */
+  #unknownNames: Set<string> | undefined
   readonly #containers = new Uint8Array(DEPTH_LIMIT + 1)
 
   /** Scans bytes[from … to) as one record. False: see `failure`. */
@@ -108,7 +116,8 @@ export class RecordScanner {
     this.#at = from
     this.#end = to
     this.type.fill(ABSENT)
-    this.#unknown.length = 0
+    this.#unknown = 0
+    this.#unknownNames = undefined
     this.#member = 0
     if (!this.#object()) return this.#blame(from, to)
     this.#white()
@@ -228,10 +237,26 @@ export class RecordScanner {
         return field
       }
     }
-    const name = unescaped(this.bytes, from, to)
-    if (this.#unknown.includes(name)) return DUPLICATE
-    this.#unknown.push(name)
-    return UNKNOWN
+    return this.#isNewUnknown(from, to) ? UNKNOWN : DUPLICATE
+  }
+
+  /** Notes a name that the format does not know; false when it was there before. */
+  #isNewUnknown(from: number, to: number): boolean {
+    const { bytes } = this
+    if (!this.#unknownNames && this.#special === 0 && this.#unknown < FEW) {
+      for (let i = 0; i < this.#unknown; i++)
+        if (isSame(bytes, this.#unknownFrom[i], this.#unknownTo[i], from, to)) return false
+      this.#unknownFrom[this.#unknown] = from
+      this.#unknownTo[this.#unknown++] = to
+      return true
+    }
+    if (!this.#unknownNames) {
+      this.#unknownNames = new Set()
+      for (let i = 0; i < this.#unknown; i++)
+        this.#unknownNames.add(decodeUtf8(bytes, this.#unknownFrom[i], this.#unknownTo[i]))
+    }
+    const { size } = this.#unknownNames
+    return this.#unknownNames.add(unescaped(bytes, from, to)).size > size
   }
 
   /** Scans the value that begins with byte `c` and leaves its type, ABSENT on failure. */
@@ -293,27 +318,28 @@ export class RecordScanner {
     const bytes = this.bytes
     const end = this.#end
     let at = this.#at
-    const digits = (): boolean => {
-      const from = at
-      while (at < end && bytes[at] >= 0x30 && bytes[at] <= 0x39) at++
-      return at > from
-    }
     if (bytes[at] === 0x2d) {
       this.#special = 1
       at++
     }
-    if (bytes[at] === 0x30 && at < end) at++
-    else if (!digits()) return this.#fail('not-json', at, 'a digit')
+    const whole = at
+    at = digitsEnd(bytes, at, end)
+    if (at === whole) return this.#fail('not-json', at, 'a digit')
+    // Nothing may follow a leading zero.
+    if (bytes[whole] === 0x30) at = whole + 1
     if (at < end && bytes[at] === 0x2e) {
       this.#special = 1
-      at++
-      if (!digits()) return this.#fail('not-json', at, 'a digit after the point')
+      const fraction = ++at
+      at = digitsEnd(bytes, at, end)
+      if (at === fraction) return this.#fail('not-json', at, 'a digit after the point')
     }
     if (at < end && (bytes[at] === 0x65 || bytes[at] === 0x45)) {
       this.#special = 1
       at++
       if (at < end && (bytes[at] === 0x2b || bytes[at] === 0x2d)) at++
-      if (!digits()) return this.#fail('not-json', at, 'a digit in the exponent')
+      const exponent = at
+      at = digitsEnd(bytes, at, end)
+      if (at === exponent) return this.#fail('not-json', at, 'a digit in the exponent')
     }
     this.#at = at
     return true
@@ -366,8 +392,21 @@ export class RecordScanner {
   }
 }
 
+function isSame(bytes: Uint8Array, aFrom: number, aTo: number, bFrom: number, bTo: number): boolean {
+  if (aTo - aFrom !== bTo - bFrom) return false
+  for (let a = aFrom, b = bFrom; a < aTo; a++, b++) if (bytes[a] !== bytes[b]) return false
+  return true
+}
+
 const UNKNOWN = -1
 const DUPLICATE = -2
+
+/** Where the digits from `at` on end. */
+function digitsEnd(bytes: Uint8Array, at: number, end: number): number {
+  let to = at
+  while (to < end && bytes[to] >= 0x30 && bytes[to] <= 0x39) to++
+  return to
+}
 
 function isEscape(c: number): boolean {
   switch (c) {

@@ -45,7 +45,7 @@ export class Splits {
   /** What is wrong with using this id for an operation, if anything. */
   trouble(id: number, isOpen: boolean): string | undefined {
     if (id < this.#state.length && this.#state[id] !== UNSEEN) return 'an id that no other operation has'
-    if (!isOpen && this.#waiting.has(id))
+    if (!isOpen && this.#waiting.delete(id))
       return 'an id without a closing half elsewhere: this operation has its end'
     return undefined
   }

@@ -93,8 +93,8 @@ export function surveyHistory(history: History): Omit<Survey, 'survey' | 'misrea
     operations: KIND_NAMES.map((op, kind) => surveyKind(history, op, kind)).filter(
       ({ acked, refused, unsure }) => acked + refused + unsure > 0,
     ),
-    clients: history.clients.size,
-    hosts: history.hosts.size,
+    clients: countUsed(history.client, history),
+    hosts: countUsed(history.host, history),
     keys,
     busiestKeys: busiest.map((k) => ({ key: history.keys.name(k), operations: perKey[k] })),
     ...span,
@@ -107,6 +107,13 @@ export function surveyHistory(history: History): Omit<Survey, 'survey' | 'misrea
     clockErrorNs: history.clockErrorNs.toString(),
     warnings: history.warnings.map((warning) => ({ ...warning })),
   }
+}
+
+/** How many ids a column uses; the name tables also hold names of records that could not be used. */
+function countUsed(column: Int32Array, { count: n }: History): number {
+  const used = new Set<number>()
+  for (let i = 0; i < n; i++) if (column[i] >= 0) used.add(column[i])
+  return used.size
 }
 
 function surveyKind(

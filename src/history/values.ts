@@ -46,7 +46,17 @@ export class ValueTable implements Values {
 }
 
 /** What keeps a JSON value from being one: a member named twice, a number out of all reason. */
-export class ValueTrouble extends Error {}
+export class ValueTrouble extends Error {
+  /** the code of the input problem that it is */
+  readonly code: 'duplicate-member' | 'number-out-of-range'
+  readonly expected: string
+
+  constructor(code: ValueTrouble['code'], found: string, expected: string) {
+    super(found)
+    this.code = code
+    this.expected = expected
+  }
+}
 
 /**
  * The canonical text of checked JSON text: no white space, members sorted by name, one spelling of each string
@@ -76,8 +86,14 @@ class CanonicalParser {
     const token = this.#json.slice(from, this.#at)
     if (token === 'null' || token === 'true' || token === 'false') return token
     const decimal = parseDecimal(token)
-    if (!decimal)
-      throw new ValueTrouble(`the number ${token.slice(0, 40)}, whose exponent is out of all reason`)
+    if (!decimal) {
+      const start = token.slice(0, 40)
+      throw new ValueTrouble(
+        'number-out-of-range',
+        `a number that begins ${start}… and whose exponent is out of all reason`,
+        'an exponent of at most 1000 digits',
+      )
+    }
     return canonicalNumber(decimal)
   }
 
@@ -91,7 +107,13 @@ class CanonicalParser {
       const name = this.#string()
       this.#white()
       this.#at++
-      if (members.has(name)) throw new ValueTrouble(`the member ${JSON.stringify(name)} twice`)
+      if (members.has(name)) {
+        throw new ValueTrouble(
+          'duplicate-member',
+          `the member ${JSON.stringify(name)} twice`,
+          'each member of an object once',
+        )
+      }
       members.set(name, this.value())
       this.#white()
     }

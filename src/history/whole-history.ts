@@ -2,9 +2,11 @@
  * What can be said of a history only once all of it is read.
  */
 import { fileOf, type History, INCREMENT, NO_VALUE, READ } from './columns.js'
+import type { InitialValue } from './headers.js'
 import type { InputProblem } from './problems.js'
 
-type Report = (problem: InputProblem) => void
+/** Takes a problem, made only if it is kept: there may be one for every operation. */
+type Report = (make: () => InputProblem) => void
 
 /**
  * One client is one sequential requester: its operations must not overlap in time, and one without an end must
@@ -39,8 +41,8 @@ export function checkSessions(history: History, report: Report): void {
     }
     for (let i = 1; i < session.length; i++) {
       const [a, b] = [session[i - 1], session[i]]
-      if (hasEnd[a] === 0) report(unendedBefore(history, a, b))
-      else if (end(a) > start(b)) report(overlap(history, a, b))
+      if (hasEnd[a] === 0) report(() => unendedBefore(history, a, b))
+      else if (end(a) > start(b)) report(() => overlap(history, a, b))
     }
   }
 }
@@ -74,7 +76,7 @@ function unendedBefore(history: History, a: number, b: number): InputProblem {
  */
 export function checkCounterValues(
   history: History,
-  initial: ReadonlyMap<string, number>,
+  initial: ReadonlyMap<string, InitialValue>,
   report: Report,
 ): void {
   const { count, key, kind, value, keys, values } = history
@@ -93,26 +95,26 @@ export function checkCounterValues(
   for (let i = 0; i < count; i++) {
     if (increments[key[i]] === 0 || others[key[i]] === 1 || value[i] === NO_VALUE || !spells(value[i]))
       continue
-    report({
+    report(() => ({
       code: 'number-as-string',
       ...placeOf(history, i),
       found: `the string ${values.text(value[i])} on the counter ${JSON.stringify(keys.name(key[i]))}`,
       expected: 'a number',
       advice: 'record the number that the string spells',
-    })
+    }))
   }
   if (initial.size === 0) return
   for (let k = 0; k < keys.size; k++) {
     if (increments[k] === 0 || others[k] === 1) continue
-    const id = initial.get(keys.name(k))
-    if (id === undefined || !spells(id)) continue
-    report({
+    const stated = initial.get(keys.name(k))
+    if (!stated || !spells(stated.value)) continue
+    report(() => ({
       code: 'number-as-string',
-      file: history.files[0].name,
-      found: `the string ${values.text(id)} as initial value of the counter ${JSON.stringify(keys.name(k))}`,
+      ...stated.place,
+      found: `the string ${values.text(stated.value)} as initial value of the counter ${JSON.stringify(keys.name(k))}`,
       expected: 'a number',
       advice: 'record the number that the string spells',
-    })
+    }))
   }
 }
 

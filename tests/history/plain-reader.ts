@@ -9,12 +9,16 @@ import { closeSchema, headerSchema, markSchema, operationSchema } from '../../sr
 export interface PlainReading {
   operations: Record<string, unknown>[]
   marks: Record<string, unknown>[]
+  /** nanoseconds in one unit of the times */
+  unitNs: number
   /** records that are no valid record */
   wrong: number
 }
 
+const UNITS: Record<string, number> = { ns: 1, us: 1e3, ms: 1e6, s: 1e9 }
+
 export async function readPlainly(text: string): Promise<PlainReading> {
-  const reading: PlainReading = { operations: [], marks: [], wrong: 0 }
+  const reading: PlainReading = { operations: [], marks: [], unitNs: 1, wrong: 0 }
   const open = new Map<string, Record<string, unknown>>()
   for await (const value of Readable.from([text]).pipe(ndjson.parse())) {
     const record = value as Record<string, unknown>
@@ -36,9 +40,14 @@ export async function readPlainly(text: string): Promise<PlainReading> {
       reading.operations.push(operation)
       if (unended && typeof record.id === 'string') open.set(record.id, operation)
     } else if ('mark' in record) reading.marks.push(record)
+    else if ('history' in record) reading.unitNs = UNITS[(record.unit as string | undefined) ?? 'ns']
     else if ('id' in record) {
       const { id, ...close } = record
-      Object.assign(open.get(id as string) ?? {}, { outcome: 'acked' }, close)
+      const operation = open.get(id as string)
+      if (!operation) continue
+      Object.assign(operation, { outcome: 'acked' }, close)
+      // The halves may be good by themselves and yet make no operation.
+      if (!operationSchema.safeParse(operation).success) reading.wrong++
     }
   }
   return reading

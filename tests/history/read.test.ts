@@ -1,9 +1,10 @@
+import { Readable } from 'node:stream'
 import { gzipSync } from 'node:zlib'
 import { describe, expect, it } from 'vitest'
 import { ACKED, type History, REFUSED, UNSURE } from '../../src/history/columns.js'
 import { InputError, type InputProblem } from '../../src/history/problems.js'
 import { readHistory, readTolerantly } from '../../src/history/read.js'
-import { type ByteSource, textSource } from '../../src/history/source.js'
+import { type ByteSource, standardInputSource, textSource } from '../../src/history/source.js'
 
 const OP = '{"client":"a","op":"write","key":"k","value":1,"start":1,"end":2}'
 const read = (...texts: string[]): Promise<History> =>
@@ -30,6 +31,11 @@ function pieces(text: string | Uint8Array, size: number): ByteSource {
   }
 }
 
+/** The same, unpacked where it is gzip. */
+function unpacked(bytes: Uint8Array, size: number): ByteSource {
+  return standardInputSource(Readable.from(pieces(bytes, size).chunks()))
+}
+
 const line = (fields: string): string => `{"client":"a","key":"k","start":1,"end":2,${fields}}`
 
 describe('what is an input error', () => {
@@ -44,7 +50,7 @@ describe('what is an input error', () => {
     ['a member twice', line('"op":"delete","op":"read"'), 'duplicate-member'],
     ['an unknown member twice', line('"op":"delete","x":1,"x":2'), 'duplicate-member'],
     ['a member twice, once escaped', line('"op":"delete","\\u006fp":"read"'), 'duplicate-member'],
-    ['a member twice inside a value', line('"op":"write","value":{"x":1,"x":2}'), 'ill-typed-field'],
+    ['a member twice inside a value', line('"op":"write","value":{"x":1,"x":2}'), 'duplicate-member', 64],
     ['an unknown op', line('"op":"put"'), 'unknown-op'],
     ['an unknown outcome', line('"op":"delete","outcome":"ok"'), 'unknown-outcome'],
     ['no client', '{"op":"delete","key":"k","start":1,"end":2}', 'missing-field'],
@@ -179,9 +185,87 @@ describe('what is an input error', () => {
     )
   })
 
+  it('what stands behind the padding of a gzip stream, which unpacking would pass over', async () => {
+    const other = OP.replace('"a"', '"b"')
+    const parts = [gzipSync(`${OP}\n`), Buffer.alloc(9), gzipSync(`${other}\n`)]
+    const packed = Buffer.concat(parts)
+    for (let size = 1; size <= packed.length; size++) {
+      await expect(readHistory([unpacked(packed, size)]), `chunks of ${size}`).rejects.toMatchObject({
+        problems: [{ code: 'bad-gzip', file: '-', line: 2 }],
+      })
+    }
+    expect((await readHistory([textSource('f', Buffer.concat(parts.slice(0, 2)))])).count).toBe(1)
+    const joined = Buffer.concat([parts[0], parts[2]])
+    for (let size = 1; size <= joined.length; size++)
+      expect((await readHistory([unpacked(joined, size)])).count, `chunks of ${size}`).toBe(2)
+  })
+
+  it('a gzip stream cut short, on the line where it ends, beside what is wrong before it and elsewhere', async () => {
+    const packed = gzipSync(`${OP}\nnonsense\n`)
+    const { history, problems } = await readTolerantly([
+      textSource('f', packed.subarray(0, packed.length - 8)),
+      textSource('g', `${OP.replace('"a"', '"b"')}\nnonsense\n`),
+    ])
+    expect(history.count).toBe(2)
+    expect(problems).toMatchObject([
+      { code: 'not-json', file: 'f', line: 2 },
+      { code: 'gzip-cut-short', file: 'f', line: 3 },
+      { code: 'not-json', file: 'g', line: 2 },
+    ])
+  })
+
+  it('every cut of a gzip stream', async () => {
+    const packed = gzipSync(`${OP}\n${OP.replace('"a"', '"b"')}\n`)
+    for (let end = 3; end < packed.length; end++) {
+      await expect(
+        readHistory([textSource('f', packed.subarray(0, end))]),
+        `at ${end}`,
+      ).rejects.toMatchObject({
+        problems: [{ code: 'gzip-cut-short' }],
+      })
+    }
+  })
+
+  it('an initial value that is a string of a number, in the header that states it', async () => {
+    const increment = '{"client":"b","op":"increment","key":"n","start":1,"end":2}'
+    expect(await problemsOf(`${OP}\n`, `\n{"history":1,"initial":{"n":"7"}}\n${increment}\n`)).toMatchObject([
+      { code: 'number-as-string', file: 'f1', line: 2 },
+    ])
+  })
+
+  it('a last line without its end that is whole JSON and yet no good record', async () => {
+    for (const [last, code] of [
+      ['{"client":"b","op":"delete","op":"delete","key":"k","start":1,"end":2}', 'duplicate-member'],
+      ['{"client":"b","op":"delete","start":1,"end":2}', 'missing-field'],
+      [line(`"op":"write","value":${'['.repeat(600)}${']'.repeat(600)}`), 'too-deep'],
+      ['12', 'not-json'],
+    ])
+      expect(await problemsOf(`${OP}\n${last}`), last).toMatchObject([{ code, line: 2 }])
+  })
+
+  it('an id of an operation that has its end, closed elsewhere: one error', async () => {
+    expect(await problemsOf(`{"id":"x","end":9}\n${OP.replace('{', '{"id":"x",')}\n`)).toMatchObject([
+      { code: 'misused-id', line: 2, column: 7 },
+    ])
+  })
+
   it('an empty history: a check of nothing must not pass', async () => {
     for (const text of ['', '\n', '{"history":1}\n', '{"mark":"m","start":1}\n']) {
       expect(await problemsOf(text), JSON.stringify(text)).toMatchObject([{ code: 'empty-history' }])
+    }
+  })
+
+  it('names of members are compared as they read, however many there are', async () => {
+    const members = Array.from({ length: 100_000 }, (_, i) => `"x${i}":0`)
+    expect((await read(`${line(['"op":"delete"', ...members].join(','))}\n`)).count).toBe(1)
+    for (const last of ['"x99999":0', '"x0":0', '"\\u00785":0']) {
+      for (const many of [members, members.slice(0, 6), ['"\\u0079":0', '"x0":0', '"x5":0', '"x99999":0']]) {
+        const unknown = [...many, last]
+        const again = new Set(unknown.map((member) => JSON.stringify(JSON.parse(`{${member}}`)))).size
+        expect(
+          (await problemsOf(`${line(['"op":"delete"', ...unknown].join(','))}\n`)).map(({ code }) => code),
+        ).toEqual(again < unknown.length ? ['duplicate-member'] : [])
+      }
     }
   })
 
@@ -208,6 +292,11 @@ describe('values', () => {
     ['0e5', '0'],
     ['1e400', '10e399'],
     ['1E+2', '100'],
+    ['1e0000000000000000000000000000001', '10'],
+    ['0e99999999999999999999', '0'],
+    [`1${'0'.repeat(49)}`, '1e49'],
+    [`${'123456789'.repeat(5)}`, `${'123456789'.repeat(5)}.0`],
+    [`-${'123456789'.repeat(5)}`, `-${'123456789'.repeat(5)}e0`],
     ['"a"', '"\\u0061"'],
     ['"\\/"', '"/"'],
     ['"\\ud83d\\ude00"', '"😀"'],
@@ -228,6 +317,12 @@ describe('values', () => {
     ['true', '"true"'],
   ])('%s and %s are two', async (a, b) => {
     expect(await same(a, b)).toBe(false)
+  })
+
+  it('long numbers take no time squared', async () => {
+    const number = `1${'0'.repeat(300_000)}1`
+    expect(await same(number, `${number}.0`)).toBe(true)
+    expect(await same(number, `${number}.1`)).toBe(false)
   })
 
   it('names that would be special elsewhere are names', async () => {

@@ -67,4 +67,29 @@ describe('a source of several chunks', () => {
     expect(await fetchLines([source], wanted)).toEqual(wanted.map(({ line }) => lines[line - 1]))
     expect(history.values.text(history.value[29_999])).toBe(JSON.stringify(JSON.parse(lines[29_999]).value))
   })
+
+  it('standard input that was read in part is read on, and again from its start', async () => {
+    const parts = ['one\n', 'two\nthree\n', 'four\n'].map((part) => Buffer.from(part))
+    const source = standardInputSource(Readable.from(parts))
+    for (const line of [1, 3, 2, 4, 1])
+      expect(await fetchLines([source], [{ file: 0, line }])).toEqual([
+        ['one', 'two', 'three', 'four'][line - 1],
+      ])
+  })
+})
+
+describe('what cannot be read', () => {
+  it('is said, file by file', async () => {
+    await expect(fileSource(join(folder, 'none.ndjson'))).rejects.toMatchObject({
+      problems: [{ code: 'unreadable', found: 'no such file' }],
+    })
+    await expect(fileSource(folder)).rejects.toMatchObject({ problems: [{ code: 'not-a-file' }] })
+    const path = join(folder, 'gone.ndjson')
+    writeFileSync(path, text)
+    const source = await fileSource(path)
+    rmSync(path)
+    await expect(readHistory([source])).rejects.toMatchObject({
+      problems: [{ code: 'unreadable', file: path, found: 'no such file' }],
+    })
+  })
 })

@@ -158,7 +158,7 @@ describe('a recorder', () => {
     const history = await historyOf(recorder.paths)
     expect(Array.from(history.value.subarray(0, history.count), (id) => history.values.text(id))).toEqual([
       '-9223372036854775808',
-      '10000000000000000000000000000000000000000',
+      '1e40',
       '0.1',
       '"\\ud800"',
       '"line\\nend"',
