@@ -1,0 +1,173 @@
+/**
+ * A set of configurations of the search, the undominated ones, in flat arrays.
+ *
+ * A configuration is a state of the copy and two bit sets over the slots of the operations in flight: `open`, what is
+ * not placed yet (reads: not answered), and `late`, writes among them that cannot be thought of as hidden before the
+ * last blind write any more. At equal state one that has fewer reads open, fewer writes placed and fewer of them late
+ * is at least as good: whatever the other one can still do, it can.
+ */
+export interface Configuration {
+  state: number
+  /** `words` words of open, then as many of late */
+  readonly bits: Int32Array
+  /** its path, a node of `Paths` */
+  node: number
+  /** unsure writes that its path used, where they are not among the slots; ascending by time of use */
+  used: readonly number[]
+  /** 1: its path used more unsure writes of a value than there are */
+  over: number
+}
+
+export class Configurations {
+  /** entries, dead ones included: look at `isLive` */
+  count = 0
+  /** live entries */
+  size = 0
+  readonly #words: number
+  #state = new Int32Array(64)
+  #bits: Int32Array
+  #node = new Int32Array(64)
+  #next = new Int32Array(64)
+  #flags = new Uint8Array(64)
+  #used: (readonly number[])[] = []
+  readonly #heads = new Map<number, number>()
+
+  constructor(words: number) {
+    this.#words = words
+    this.#bits = new Int32Array(64 * 2 * words)
+  }
+
+  clear(): void {
+    this.count = 0
+    this.size = 0
+    this.#used.length = 0
+    this.#heads.clear()
+  }
+
+  isLive(i: number): boolean {
+    return (this.#flags[i] & DEAD) === 0
+  }
+
+  nodeOf(i: number): number {
+    return this.#node[i]
+  }
+
+  setNode(i: number, node: number): void {
+    this.#node[i] = node
+  }
+
+  isOver(i: number): boolean {
+    return (this.#flags[i] & OVER) !== 0
+  }
+
+  stateOf(i: number): number {
+    return this.#state[i]
+  }
+
+  isOpen(i: number, slot: number): boolean {
+    return (this.#bits[i * 2 * this.#words + (slot >> 5)] & (1 << (slot & 31))) !== 0
+  }
+
+  setOpen(i: number, slot: number): void {
+    this.#bits[i * 2 * this.#words + (slot >> 5)] |= 1 << (slot & 31)
+  }
+
+  setLate(i: number, slot: number): void {
+    this.#bits[(i * 2 + 1) * this.#words + (slot >> 5)] |= 1 << (slot & 31)
+  }
+
+  /** Copies entry i. */
+  load(i: number, into: Configuration): void {
+    const stride = 2 * this.#words
+    const from = i * stride
+    for (let b = 0; b < stride; b++) into.bits[b] = this.#bits[from + b]
+    into.state = this.#state[i]
+    into.node = this.#node[i]
+    into.used = this.#used[i]
+    into.over = (this.#flags[i] & OVER) !== 0 ? 1 : 0
+  }
+
+  /**
+   * Adds a copy unless one that is at least as good is there; drops those that it is at least as good as. `reads` is
+   * the bit set of slots that reads have. Returns whether it was added.
+   */
+  insert(one: Configuration, reads: Int32Array): boolean {
+    let before = -1
+    for (let i = this.#heads.get(one.state) ?? -1; i >= 0; ) {
+      const next = this.#next[i]
+      const known = (this.#flags[i] & OVER) !== 0 ? 1 : 0
+      const [isKnownAsGood, isNewAsGood] = [known <= one.over, one.over <= known]
+      const comparison = this.#compare(i, one.bits, reads)
+      if (isKnownAsGood && (comparison & KNOWN_AS_GOOD) !== 0) return false
+      if (isNewAsGood && (comparison & NEW_AS_GOOD) !== 0) {
+        this.#flags[i] |= DEAD
+        this.size--
+        if (before < 0) this.#heads.set(one.state, next)
+        else this.#next[before] = next
+      } else {
+        before = i
+      }
+      i = next
+    }
+    this.append(one)
+    return true
+  }
+
+  /** Adds a copy that is known to be comparable with none of the others. */
+  append(one: Configuration): void {
+    const i = this.count++
+    this.size++
+    if (i === this.#state.length) this.#grow()
+    const stride = 2 * this.#words
+    const to = i * stride
+    for (let b = 0; b < stride; b++) this.#bits[to + b] = one.bits[b]
+    this.#state[i] = one.state
+    this.#node[i] = one.node
+    this.#used[i] = one.used
+    this.#flags[i] = one.over === 0 ? 0 : OVER
+    this.#next[i] = this.#heads.get(one.state) ?? -1
+    this.#heads.set(one.state, i)
+  }
+
+  /** Which of entry i and a new one of the same state is at least as good as the other, as two flags. */
+  #compare(i: number, bits: Int32Array, reads: Int32Array): number {
+    const words = this.#words
+    const own = i * 2 * words
+    let result = KNOWN_AS_GOOD | NEW_AS_GOOD
+    for (let b = 0; b < words; b++) {
+      const knownOpen = this.#bits[own + b]
+      const newOpen = bits[b]
+      const knownLate = this.#bits[own + words + b]
+      const newLate = bits[words + b]
+      const onlyKnown = knownOpen & ~newOpen
+      const onlyNew = newOpen & ~knownOpen
+      const read = reads[b]
+      if (((onlyKnown & read) | (onlyNew & ~read) | (knownLate & ~newLate)) !== 0) result &= ~KNOWN_AS_GOOD
+      if (((onlyNew & read) | (onlyKnown & ~read) | (newLate & ~knownLate)) !== 0) result &= ~NEW_AS_GOOD
+      if (result === 0) return 0
+    }
+    return result
+  }
+
+  #grow(): void {
+    const room = 2 * this.#state.length
+    this.#state = grown(this.#state, room)
+    this.#bits = grown(this.#bits, room * 2 * this.#words)
+    this.#node = grown(this.#node, room)
+    this.#next = grown(this.#next, room)
+    const flags = new Uint8Array(room)
+    flags.set(this.#flags)
+    this.#flags = flags
+  }
+}
+
+const DEAD = 1
+const OVER = 2
+const KNOWN_AS_GOOD = 1
+const NEW_AS_GOOD = 2
+
+export function grown(array: Int32Array, length: number): Int32Array<ArrayBuffer> {
+  const larger = new Int32Array(length)
+  larger.set(array)
+  return larger
+}
