@@ -105,8 +105,8 @@ export class Flight {
   }
 
   #relate(a: number, b: number): void {
-    let before = this.#before.get(b)
-    if (!before) this.#before.set(b, (before = new Int32Array(this.words)))
+    const before = this.#before.get(b) ?? new Int32Array(this.words)
+    this.#before.set(b, before)
     const slot = this.slotOf[a]
     before[slot >> 5] |= 1 << (slot & 31)
     this.relations = this.#before.size

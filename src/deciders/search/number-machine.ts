@@ -145,7 +145,9 @@ export class NumberMachine implements Machine {
 }
 
 function remembered(answers: Map<number, number>, p: number, work: () => number): number {
-  let answer = answers.get(p)
-  if (answer === undefined) answers.set(p, (answer = work()))
+  const known = answers.get(p)
+  if (known !== undefined) return known
+  const answer = work()
+  answers.set(p, answer)
   return answer
 }

@@ -20,7 +20,7 @@ export class RegisterMachine implements Machine {
   /** true: a state is a value id; false: it is the local index of the last write, -1 - i for the initial value i */
   readonly #byValue: boolean
   readonly #starts: readonly number[]
-  /** by write: what `#maySee` said, 0 unknown, 1 yes, 2 no */
+  /** write → read → what `#maySee` said */
   readonly #seen = new Map<number, Map<number, boolean>>()
 
   constructor(counting: Counting) {
@@ -63,13 +63,12 @@ export class RegisterMachine implements Machine {
   /** A read does not precede the write that it saw, and is at most so many versions behind. */
   #maySee(state: number, p: number): boolean {
     const writer = state < 0 ? -1 : state
-    let answers = this.#seen.get(writer)
-    if (!answers) this.#seen.set(writer, (answers = new Map()))
-    let answer = answers.get(p)
-    if (answer === undefined) {
-      answer = maySee(this.#counting, writer, p)
-      answers.set(p, answer)
-    }
+    const answers = this.#seen.get(writer) ?? new Map<number, boolean>()
+    this.#seen.set(writer, answers)
+    const known = answers.get(p)
+    if (known !== undefined) return known
+    const answer = maySee(this.#counting, writer, p)
+    answers.set(p, answer)
     return answer
   }
 }
