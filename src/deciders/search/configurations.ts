@@ -12,10 +12,8 @@ export interface Configuration {
   readonly bits: Int32Array
   /** its path, a node of `Paths` */
   node: number
-  /** unsure writes that its path used, where they are not among the slots; ascending by time of use */
+  /** unsure writes that its path used, where they are not among the slots, in order of use */
   used: readonly number[]
-  /** 1: its path used more unsure writes of a value than there are */
-  over: number
 }
 
 export class Configurations {
@@ -28,12 +26,16 @@ export class Configurations {
   #bits: Int32Array
   #node = new Int32Array(64)
   #next = new Int32Array(64)
-  #flags = new Uint8Array(64)
+  #isDead = new Uint8Array(64)
   #used: (readonly number[])[] = []
   readonly #heads = new Map<number, number>()
 
-  constructor(words: number) {
+  readonly #areCounted: boolean
+
+  /** `words` of a bit set; `areCounted`: whether it is better to have used fewer unsure writes. */
+  constructor(words: number, areCounted: boolean) {
     this.#words = words
+    this.#areCounted = areCounted
     this.#bits = new Int32Array(64 * 2 * words)
   }
 
@@ -45,7 +47,7 @@ export class Configurations {
   }
 
   isLive(i: number): boolean {
-    return (this.#flags[i] & DEAD) === 0
+    return this.#isDead[i] === 0
   }
 
   nodeOf(i: number): number {
@@ -56,8 +58,8 @@ export class Configurations {
     this.#node[i] = node
   }
 
-  isOver(i: number): boolean {
-    return (this.#flags[i] & OVER) !== 0
+  usedBy(i: number): readonly number[] {
+    return this.#used[i]
   }
 
   stateOf(i: number): number {
@@ -84,7 +86,6 @@ export class Configurations {
     into.state = this.#state[i]
     into.node = this.#node[i]
     into.used = this.#used[i]
-    into.over = (this.#flags[i] & OVER) !== 0 ? 1 : 0
   }
 
   /**
@@ -95,12 +96,14 @@ export class Configurations {
     let before = -1
     for (let i = this.#heads.get(one.state) ?? -1; i >= 0; ) {
       const next = this.#next[i]
-      const known = (this.#flags[i] & OVER) !== 0 ? 1 : 0
-      const [isKnownAsGood, isNewAsGood] = [known <= one.over, one.over <= known]
       const comparison = this.#compare(i, one.bits, reads)
-      if (isKnownAsGood && (comparison & KNOWN_AS_GOOD) !== 0) return false
-      if (isNewAsGood && (comparison & NEW_AS_GOOD) !== 0) {
-        this.#flags[i] |= DEAD
+      const isThriftier = this.#areCounted && one.used.length < this.#used[i].length
+      if ((comparison & KNOWN_AS_GOOD) !== 0 && !isThriftier) return false
+      if (
+        (comparison & NEW_AS_GOOD) !== 0 &&
+        (!this.#areCounted || one.used.length <= this.#used[i].length)
+      ) {
+        this.#isDead[i] = 1
         this.size--
         if (before < 0) this.#heads.set(one.state, next)
         else this.#next[before] = next
@@ -124,9 +127,24 @@ export class Configurations {
     this.#state[i] = one.state
     this.#node[i] = one.node
     this.#used[i] = one.used
-    this.#flags[i] = one.over === 0 ? 0 : OVER
+    this.#isDead[i] = 0
     this.#next[i] = this.#heads.get(one.state) ?? -1
     this.#heads.set(one.state, i)
+  }
+
+  /** Drops all but the `most` entries that used the fewest unsure writes. */
+  thin(most: number): void {
+    if (this.size <= most) return
+    const live: number[] = []
+    for (let i = 0; i < this.count; i++) if (this.isLive(i)) live.push(i)
+    live.sort((a, b) => this.#used[a].length - this.#used[b].length || a - b)
+    for (const i of live.slice(most)) this.#isDead[i] = 1
+    this.size = most
+    this.#heads.clear()
+    for (const i of live.slice(0, most)) {
+      this.#next[i] = this.#heads.get(this.#state[i]) ?? -1
+      this.#heads.set(this.#state[i], i)
+    }
   }
 
   /** Which of entry i and a new one of the same state is at least as good as the other, as two flags. */
@@ -155,14 +173,12 @@ export class Configurations {
     this.#bits = grown(this.#bits, room * 2 * this.#words)
     this.#node = grown(this.#node, room)
     this.#next = grown(this.#next, room)
-    const flags = new Uint8Array(room)
-    flags.set(this.#flags)
-    this.#flags = flags
+    const isDead = new Uint8Array(room)
+    isDead.set(this.#isDead)
+    this.#isDead = isDead
   }
 }
 
-const DEAD = 1
-const OVER = 2
 const KNOWN_AS_GOOD = 1
 const NEW_AS_GOOD = 2
 

@@ -7,17 +7,30 @@ import type { Counting } from '../../order/counting.js'
 import type { Purse } from './budget.js'
 import { type SweepOutcome, sweep } from './sweep.js'
 
+/** Configurations kept where only an order is looked for, not its absence. */
+const BREADTH = 200
+
+/** Steps before the place where it got stuck from which on unsure writes are counted, at first. */
+const REACH = 500
+
 /**
- * Searches for an order of the key's operations under the promise. First unsure writes are without end once they have
- * begun; only values of which that uses too many are counted.
+ * Searches for an order of the key's operations under the promise. First as if there were no end of unsure writes
+ * once they have begun: without an order then, there is none. Then for an order that uses each only once, among few
+ * configurations. Only then those values are counted of which too many were used.
  */
 export function* search(counting: Counting, values: Values, purse: Purse): Generator<void, SweepOutcome> {
   const counted = new Set<number>()
-  for (;;) {
-    const outcome = yield* sweep(counting, values, counted, purse)
-    if (outcome.found !== 'overuse') return outcome
+  let outcome = yield* sweep(counting, values, { counted, countedFrom: 0 }, purse)
+  if (outcome.found !== 'overuse') return outcome
+  const thrifty = yield* sweep(counting, values, { counted, countedFrom: 0, breadth: BREADTH }, purse)
+  if (thrifty.found === 'order') return thrifty
+  // Counting from shortly before the thrifty search got stuck is often enough to see that there is no order.
+  const stuck = thrifty.found === 'none' || thrifty.found === 'spent' ? thrifty.step : 0
+  for (let reach = REACH; outcome.found === 'overuse'; reach *= 4) {
     for (const value of outcome.values) counted.add(value)
+    outcome = yield* sweep(counting, values, { counted, countedFrom: Math.max(0, stuck - reach) }, purse)
   }
+  return outcome
 }
 
 /** Runs a search to its end. */

@@ -17,6 +17,19 @@ import { Flight } from './flight.js'
 import { IMPOSSIBLE, type Machine, machineFor } from './machine.js'
 import { NO_NODE, Paths } from './paths.js'
 
+/** How a search deals with unsure writes that nobody tells apart. */
+export interface Manner {
+  /** values of which each unsure write is accounted for in a configuration */
+  readonly counted: ReadonlySet<number>
+  /** step of the agenda from which on they are accounted for; before, there is no end of them */
+  readonly countedFrom: number
+  /**
+   * Of the other values: undefined, there is no end of them once one has begun; else none is used twice on a path, and
+   * only so many configurations are kept, the thriftiest ones: `none` is then no answer.
+   */
+  readonly breadth?: number
+}
+
 export type SweepOutcome =
   | {
       readonly found: 'order'
@@ -27,22 +40,23 @@ export type SweepOutcome =
       readonly found: 'none'
       /** the operation that could be placed nowhere: those that begin after it ended play no part */
       readonly stuckAt: number
+      /** step of the agenda at which that was */
+      readonly step: number
     }
   /** an order that uses some unsure writes more than once: these values have to be counted */
   | { readonly found: 'overuse'; readonly values: ReadonlySet<number> }
   | { readonly found: 'spent'; readonly step: number; readonly steps: number; readonly kept: number }
 
 /**
- * Runs the search. `counted`: values of which each unsure write is accounted for; of others there is no end once one
- * has begun. Yields now and then, so that others may work; stops when the purse is empty.
+ * Runs the search. Yields now and then, so that others may work; stops when the purse is empty.
  */
 export function* sweep(
   counting: Counting,
   values: Values,
-  counted: ReadonlySet<number>,
+  manner: Manner,
   purse: Purse,
 ): Generator<void, SweepOutcome> {
-  return yield* new Sweep(counting, values, counted, purse).run()
+  return yield* new Sweep(counting, values, manner, purse).run()
 }
 
 class Sweep {
@@ -51,8 +65,12 @@ class Sweep {
   readonly #machine: Machine
   readonly #flight: Flight
   readonly #purse: Purse
+  readonly #breadth: number | undefined
+  readonly #countedFrom: number
   readonly #paths = new Paths()
   readonly #words: number
+  /** whether it does not matter which write of a value it was */
+  readonly #isByValue: boolean
   readonly #isCounted: (p: number) => boolean
   readonly #hasCas: boolean
   #layer: Configurations
@@ -68,24 +86,31 @@ class Sweep {
   #due = -1
   /** whether the configuration being worked on had the due write hidden already */
   #wasHidden = false
+  /** index of the step of the agenda */
+  #step = 0
+  /** whether to do without unsure writes */
+  #isSparing = false
   /** whether the last placement answered a read */
   #answered = false
 
-  constructor(counting: Counting, values: Values, counted: ReadonlySet<number>, purse: Purse) {
+  constructor(counting: Counting, values: Values, manner: Manner, purse: Purse) {
+    const { counted, breadth } = manner
     const { key } = counting
     this.#counting = counting
     this.#purse = purse
+    this.#breadth = breadth
+    this.#countedFrom = manner.countedFrom
     this.#agenda = makeAgenda(counting)
     this.#machine = machineFor(counting, values)
     // Where it matters which write of a value it was, no two of them are alike.
     const { readWrite, writeRead } = counting.rule
-    const isByValue = readWrite === 'all' && writeRead === 'all' && !key.hasIncrements
-    this.#isCounted = (p) => !isByValue || !this.#machine.isBlind(p) || counted.has(key.value[p])
+    this.#isByValue = readWrite === 'all' && writeRead === 'all' && !key.hasIncrements
+    this.#isCounted = (p) => !this.#isByValue || !this.#machine.isBlind(p) || counted.has(key.value[p])
     this.#flight = new Flight(counting, this.#agenda, this.#isCounted)
     this.#words = this.#flight.words
-    this.#layer = new Configurations(this.#words)
-    this.#spare = new Configurations(this.#words)
-    this.#waiting = new Configurations(this.#words)
+    this.#layer = new Configurations(this.#words, breadth !== undefined)
+    this.#spare = new Configurations(this.#words, breadth !== undefined)
+    this.#waiting = new Configurations(this.#words, breadth !== undefined)
     this.#eligible = new Int32Array(this.#words)
     this.#commit = new Int32Array(this.#words)
     this.#hasCas = key.kind.includes(CAS)
@@ -99,6 +124,7 @@ class Sweep {
     }
     for (let at = 0; at < steps.length; at++) {
       const step = steps[at]
+      this.#step = at
       if (step >= 0) {
         this.#enter(step)
       } else {
@@ -110,7 +136,7 @@ class Sweep {
             steps: steps.length,
             kept: this.#layer.size + this.#waiting.size,
           }
-        if (this.#layer.size === 0) return { found: 'none', stuckAt: p }
+        if (this.#layer.size === 0) return { found: 'none', stuckAt: p, step: at }
         this.#flight.leave(p)
       }
       if (this.#paths.isFull) this.#tidy()
@@ -118,15 +144,11 @@ class Sweep {
     return this.#outcome()
   }
 
-  /** Chooses among what is left at the end. */
+  /** What one of those that are left at the end came about by. */
   #outcome(): SweepOutcome {
-    let best = -1
-    for (let i = 0; i < this.#layer.count; i++) {
-      if (!this.#layer.isLive(i)) continue
-      if (best < 0 || (this.#layer.isOver(best) && !this.#layer.isOver(i))) best = i
-    }
-    const sequence = this.#paths.sequence(this.#layer.nodeOf(best))
-    if (!this.#layer.isOver(best)) return { found: 'order', sequence }
+    let last = 0
+    while (!this.#layer.isLive(last)) last++
+    const sequence = this.#paths.sequence(this.#layer.nodeOf(last))
     const seen = new Set<number>()
     const values = new Set<number>()
     for (const p of sequence) {
@@ -134,7 +156,7 @@ class Sweep {
       if (seen.has(p)) values.add(this.#counting.key.value[p])
       seen.add(p)
     }
-    return { found: 'overuse', values }
+    return values.size === 0 ? { found: 'order', sequence } : { found: 'overuse', values }
   }
 
   /** From now on `p` may be placed. */
@@ -191,14 +213,20 @@ class Sweep {
         this.#file(one, next)
       }
     }
+    // Where an order is enough, unsure writes are for where nothing else helps.
+    this.#isSparing = this.#breadth !== undefined
     for (let i = 0; i < waiting.count; i++) {
-      if (!waiting.isLive(i)) continue
-      this.#expand(i, next)
+      if (waiting.isLive(i)) this.#expand(i, next)
+      if (i === waiting.count - 1 && this.#isSparing && next.size === 0) {
+        this.#isSparing = false
+        i = -1
+      }
       if (!this.#purse.isTimeToLook()) continue
       if (this.#purse.isSpent()) return false
       yield
     }
     waiting.clear()
+    if (this.#breadth !== undefined) next.thin(this.#breadth)
     this.#swap(next)
     return true
   }
@@ -251,6 +279,7 @@ class Sweep {
       }
       this.#try(own, w, next)
     }
+    if (this.#isSparing) return
     for (const u of unsure) {
       if (!this.#isCounted(u)) {
         if (wantsAll || this.#wanted.has(key.value[u])) this.#tryUncounted(own, u, next)
@@ -317,6 +346,11 @@ class Sweep {
     return this.#machine.after(own.state, a) === this.#machine.after(own.state, b)
   }
 
+  /** Whether this is an unsure write that nobody tells from others of its value. */
+  #isAlikeUnsure(p: number): boolean {
+    return this.#isByValue && this.#counting.key.acked[p] === 0 && this.#machine.isBlind(p)
+  }
+
   /** Places an unsure write that is not among the slots: the first of its value left over, or one too many. */
   #tryUncounted(own: Configuration, u: number, next: Configurations): void {
     const { key } = this.#counting
@@ -328,6 +362,7 @@ class Sweep {
     }
     const alike = unsure.filter((other) => key.value[other] === key.value[u] && !this.#isCounted(other))
     for (const other of alike) if (!own.used.includes(other) && this.#try(own, other, next)) return
+    if (this.#breadth !== undefined) return
     for (const other of alike) if (own.used.includes(other) && this.#try(own, other, next)) return
   }
 
@@ -359,10 +394,11 @@ class Sweep {
     if ((relations > 0 || related[w] === 1) && !this.#needs(one, w, commit, isBlind ? eligible : undefined))
       return false
     const slot = slotOf[w]
-    if (slot >= 0) commit[slot >> 5] |= 1 << (slot & 31)
-    else {
-      if (one.used.includes(w)) one.over = 1
-      else one.used = [...one.used, w]
+    if (slot >= 0) {
+      const isEndless = this.#step < this.#countedFrom && this.#isAlikeUnsure(w)
+      if (!isEndless) commit[slot >> 5] |= 1 << (slot & 31)
+    } else {
+      if (!one.used.includes(w)) one.used = [...one.used, w]
     }
     this.#take(one, commit)
     // Whatever could have been hidden before it may be thought of as hidden from now on.
@@ -509,7 +545,7 @@ class Sweep {
   }
 
   #makeConfiguration(): Configuration {
-    return { state: 0, bits: new Int32Array(2 * this.#words), node: NO_NODE, used: [], over: 0 }
+    return { state: 0, bits: new Int32Array(2 * this.#words), node: NO_NODE, used: [] }
   }
 
   /** Forgets the paths of configurations that are gone. */
@@ -527,7 +563,6 @@ function copyInto(from: Configuration, to: Configuration): void {
   to.state = from.state
   to.node = from.node
   to.used = from.used
-  to.over = from.over
 }
 
 function isOpen(one: Configuration, slot: number): boolean {
