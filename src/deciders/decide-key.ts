@@ -1,19 +1,21 @@
 /**
  * One promise on one key: which decider answers, by the kind of the key.
  */
-import type { Values } from '../history/columns.js'
-import { countPairs } from '../order/counting.js'
+import { NO_VALUE, NULL_VALUE, type Values } from '../history/columns.js'
+import { type Counting, countPairs } from '../order/counting.js'
 import type { KeyHistory } from '../order/key-history.js'
+import { isWrite } from '../order/roles.js'
 import { isUntested } from '../order/untested.js'
+import { linearizable } from '../promises/linearizable.js'
 import type { PairRule } from '../promises/promise.js'
-import { isBrokenWithoutAbsence, mayHaveBegunAbsent } from './absent-start.js'
 import { decideCounter } from './counter.js'
 import type { Decision } from './decision.js'
 import { findLostUpdates } from './lost-updates.js'
-import { ambiguityReason, decideRegister } from './register.js'
+import { decideRegister } from './register.js'
+import { type Budget, DEFAULT_BUDGET, Purse } from './search/budget.js'
+import { resolveReads } from './search/candidates.js'
+import { search } from './search/search.js'
 import { readsTooFarBehind } from './version-bound.js'
-
-const UNKNOWN_START = 'the start is not known: a read of absence could have seen it, or what a delete left'
 
 /** register: no increments; counter: increments and reads only; mixed: increments with writes, cas or deletes. */
 export type KeyKind = 'register' | 'counter' | 'mixed'
@@ -24,10 +26,31 @@ export function kindOfKey(key: KeyHistory): KeyKind {
   return key.hasWrites ? 'mixed' : 'counter'
 }
 
-/** Decides whether the promise holds on the key. Never a guess: what no decider settles is `undecided`. */
-export function decideKey(key: KeyHistory, values: Values, rule: PairRule): Decision {
-  const { versions: bound } = rule
-  if (key.hasIncrements && (bound !== undefined || rule.name === 'no-lost-updates')) {
+/**
+ * Decides whether the promise holds on the key. Never a guess: where the search meets the budget, `undecided`. With
+ * values written once (and increments of one size) there is no search, and it costs O(n log n).
+ */
+export function decideKey(
+  key: KeyHistory,
+  values: Values,
+  rule: PairRule,
+  budget: Budget = DEFAULT_BUDGET,
+): Decision {
+  const steps = decideKeyInSteps(key, values, rule, new Purse(budget))
+  for (;;) {
+    const next = steps.next()
+    if (next.done) return next.value
+  }
+}
+
+/** As `decideKey`, for those who have other things to do: yields now and then while it searches. */
+export function* decideKeyInSteps(
+  key: KeyHistory,
+  values: Values,
+  rule: PairRule,
+  purse: Purse,
+): Generator<void, Decision> {
+  if (key.hasIncrements && (rule.versions !== undefined || rule.name === 'no-lost-updates')) {
     return { verdict: 'left-out', reason: 'it means nothing on a key with increments' }
   }
   if (rule.name === 'no-lost-updates') {
@@ -35,34 +58,83 @@ export function decideKey(key: KeyHistory, values: Values, rule: PairRule): Deci
     return lost.length > 0 ? { verdict: 'broken' } : { verdict: 'holds', untested: updates === 0 }
   }
   const counting = countPairs(key, rule)
-  switch (kindOfKey(key)) {
-    case 'register': {
-      const outcome = decideRegister(counting)
-      if (outcome.verdict === 'broken') {
-        return mayHaveBegunAbsent(key, outcome.versions) &&
-          !isBrokenWithoutAbsence(key, (rest) => decideKey(rest, values, rule).verdict === 'broken')
-          ? { verdict: 'undecided', reason: UNKNOWN_START }
-          : { verdict: 'broken' }
-      }
-      if (outcome.verdict === 'ambiguous') {
-        return { verdict: 'undecided', reason: ambiguityReason(counting, outcome.versions) }
-      }
-      if (bound !== undefined && readsTooFarBehind(counting, outcome.versions, bound).length > 0) {
-        return mayHaveBegunAbsent(key, outcome.versions)
-          ? { verdict: 'undecided', reason: UNKNOWN_START }
-          : { verdict: 'broken' }
-      }
-      return { verdict: 'holds', untested: isUntested(counting) }
-    }
-    case 'counter': {
-      const outcome = decideCounter(counting, values)
-      if (outcome.verdict === 'broken') return { verdict: 'broken' }
-      if (outcome.verdict === 'several-sizes') {
-        return { verdict: 'undecided', reason: 'its increments are of several sizes' }
-      }
-      return { verdict: 'holds', untested: isUntested(counting) }
-    }
-    case 'mixed':
-      return { verdict: 'undecided', reason: 'it mixes increments with writes, cas or deletes' }
+  const kind = kindOfKey(key)
+  if (kind === 'register') {
+    const verdict = decideByVersions(counting)
+    if (verdict !== 'ambiguous') return told(verdict, counting)
   }
+  if (kind === 'counter') {
+    const { verdict } = decideCounter(counting, values)
+    if (verdict !== 'several-sizes') return told(verdict, counting)
+  }
+  return yield* decideBySearch(counting, values, purse)
+}
+
+function told(verdict: 'holds' | 'broken', counting: Counting): Decision {
+  return verdict === 'holds' ? { verdict, untested: isUntested(counting) } : { verdict }
+}
+
+/**
+ * What the versions of a register key say, as far as precedence tells which write each read saw. `ambiguous`: the
+ * search has to say. O(n log n).
+ */
+function decideByVersions(counting: Counting): 'holds' | 'broken' | 'ambiguous' {
+  const { key } = counting
+  const plain = verdictOf(counting)
+  // Where the start is not known, absence may have been there before, whatever a delete writes later.
+  if (key.initial === NO_VALUE) return plain === 'holds' || !writesAbsence(key) ? plain : 'ambiguous'
+  if (plain !== 'ambiguous') return plain
+  const { resolved, guessed } = resolveReads(counting)
+  const known = verdictOf({ ...counting, resolved })
+  if (known !== 'ambiguous') return known
+  return verdictOf({ ...counting, resolved: guessed }) === 'holds' ? 'holds' : 'ambiguous'
+}
+
+function verdictOf(counting: Counting): 'holds' | 'broken' | 'ambiguous' {
+  const { verdict, versions } = decideRegister(counting)
+  const bound = counting.rule.versions
+  if (verdict === 'broken' || bound === undefined) return verdict
+  return readsTooFarBehind(counting, versions, bound).length > 0 ? 'broken' : verdict
+}
+
+function writesAbsence(key: KeyHistory): boolean {
+  return key.offered.has(NULL_VALUE) || key.value.some((value, p) => value === NULL_VALUE && isWrite(key, p))
+}
+
+function* decideBySearch(counting: Counting, values: Values, purse: Purse): Generator<void, Decision> {
+  const { key, rule } = counting
+  // An order that answers as one copy would in real time keeps every other promise.
+  if (rule.name !== 'linearizable' && (yield* isLinearizable(key, values, purse)))
+    return told('holds', counting)
+  const outcome = yield* search(counting, values, purse)
+  switch (outcome.found) {
+    case 'order':
+      return told('holds', counting)
+    case 'none':
+      return { verdict: 'broken' }
+    default:
+      return {
+        verdict: 'undecided',
+        reason: `${whySearch(counting)}, and the search met its budget`,
+        progress: `${Math.floor((100 * outcome.step) / outcome.steps)}% of the key's operations placed, in ${outcome.kept} ways so far`,
+      }
+  }
+}
+
+/** Answers of one key's search for linearizable, which every promise asks first. */
+const linearizableKeys = new WeakMap<KeyHistory, boolean>()
+
+function* isLinearizable(key: KeyHistory, values: Values, purse: Purse): Generator<void, boolean> {
+  const known = linearizableKeys.get(key)
+  if (known !== undefined) return known
+  const decision = yield* decideKeyInSteps(key, values, linearizable, purse)
+  if (decision.verdict !== 'undecided') linearizableKeys.set(key, decision.verdict === 'holds')
+  return decision.verdict === 'holds'
+}
+
+function whySearch({ key }: Counting): string {
+  if (!key.hasIncrements) return 'reads of it could have seen any of several writes'
+  return key.hasWrites
+    ? 'it mixes increments with writes, cas or deletes'
+    : 'its increments are of several sizes'
 }

@@ -8,7 +8,7 @@ import { type Blocks, chainBlocks } from '../order/blocks.js'
 import type { Counting } from '../order/counting.js'
 import { type IntervalOrder, sortUnits } from '../order/interval-orders.js'
 import { versionOrders } from '../order/version-orders.js'
-import { AMBIGUOUS, findVersions, type Versions } from '../order/versions.js'
+import { findVersions, type Versions } from '../order/versions.js'
 
 export interface RegisterOutcome {
   readonly verdict: 'holds' | 'broken' | 'ambiguous'
@@ -16,14 +16,17 @@ export interface RegisterOutcome {
 }
 
 /**
- * Decides a register key under the promise. `resolved` names the write that each ambiguous read saw
- * (`findVersions`). `ambiguous`: some read could have seen several writes and nothing else is wrong.
- * O(n log n).
+ * Decides a register key under the promise. `ambiguous`: some read could have seen several writes, and what the others
+ * say is not broken by itself. O(n log n).
  */
-export function decideRegister(counting: Counting, resolved?: Int32Array): RegisterOutcome {
-  const versions = findVersions(counting.key, resolved)
+export function decideRegister(counting: Counting): RegisterOutcome {
+  const versions = findVersions(counting.key, counting.resolved)
   if (versions.wrongReads.length > 0 || versions.impossibleCas >= 0) return { verdict: 'broken', versions }
-  if (versions.ambiguous >= 0) return { verdict: 'ambiguous', versions }
+  const outcome = decideVersions(counting, versions)
+  return outcome.verdict === 'holds' && versions.ambiguous >= 0 ? { verdict: 'ambiguous', versions } : outcome
+}
+
+function decideVersions(counting: Counting, versions: Versions): RegisterOutcome {
   const blocks = chainBlocks(versions)
   if (blocks.foundTwice.length > 0 || blocks.circular >= 0) return { verdict: 'broken', versions }
 
@@ -70,13 +73,4 @@ function chainRunsBackward(order: IntervalOrder, blocks: Blocks): boolean {
     if (maxStart[e] > latestStart) latestStart = maxStart[e]
   }
   return false
-}
-
-/** Why an ambiguous key is one, in plain words. */
-export function ambiguityReason(counting: Counting, versions: Versions): string {
-  const { key } = counting
-  const p = versions.ambiguous
-  if (versions.readOf[p] === AMBIGUOUS && key.applied[p] === 0)
-    return 'a failed cas does not say which value it saw'
-  return 'a value was written more than once, so a read of it could have seen either write'
 }

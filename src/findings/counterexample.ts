@@ -133,7 +133,7 @@ class Judge {
 /** With a write go its reads and the cas that found it; a torn or refused value goes with any of its sources. */
 function registerDependents(counting: Counting, finding: RawFinding): Dependents {
   const { key } = counting
-  const versions = findVersions(key)
+  const versions = findVersions(key, counting.resolved)
   const dependents = new Map<number, number[]>()
   const add = (write: number, other: number): void => {
     const others = dependents.get(write)

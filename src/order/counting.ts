@@ -15,6 +15,8 @@ export interface Counting {
   readonly delays: DelayedEnds | undefined
   /** local index → 1 for a closing read, where the promise counts those */
   readonly closing: Uint8Array | undefined
+  /** local index → the write that an ambiguous read is known to have seen (`findVersions`) */
+  readonly resolved?: Int32Array
 }
 
 /** Makes a rule ready for a gathered key. */

@@ -17,7 +17,7 @@ export async function decide(key: PlainKey, rule: PairRule): Promise<Decision> {
 export async function decideAll(key: PlainKey, rules: readonly PairRule[]): Promise<Decision[]> {
   const history = await readHistory([textSource('tiny', keyText(key))])
   const gathered = gatherKey(history, indexByKey(history), 0, history.clockErrorNs)
-  return rules.map((rule) => decideKey(gathered, history.values, rule))
+  return rules.map((rule) => decideKey(gathered, history.values, rule, { steps: 50_000 }))
 }
 
 /** How many random keys a property tries; MISREAD_RUNS multiplies it. */

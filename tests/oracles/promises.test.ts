@@ -7,7 +7,7 @@ import { PLAIN_RULES, programRule } from './rules.js'
 
 const PROMISES = PLAIN_RULES.filter(({ promise }) => promise !== 'linearizable')
 
-describe.each(['register', 'cas', 'counter'] as Family[])(
+describe.each(['register', 'cas', 'ambiguous', 'counter', 'sizes', 'mixed'] as Family[])(
   'the deciders agree with the definition on %s keys',
   (family) => {
     it.each(PROMISES)('of %o', async (plain) => {
@@ -24,7 +24,7 @@ describe.each(['register', 'cas', 'counter'] as Family[])(
           }
           expect(verdict, keyText(key)).toBe(expected)
         }),
-        { numRuns: runs(600) },
+        { numRuns: runs(400) },
       )
       expect(Math.min(tally.holds, tally.broken)).toBeGreaterThan(0.05 * (tally.holds + tally.broken))
     })

@@ -8,8 +8,11 @@ export interface Budget {
   isSpent?(): boolean
 }
 
-/** Enough for every key of a real store that we know of; some tens of seconds at worst. */
-export const DEFAULT_BUDGET: Budget = { steps: 30_000_000 }
+/** Some ten seconds at worst. */
+export const DEFAULT_BUDGET: Budget = { steps: 5_000_000 }
+
+/** For the many small questions that a counterexample or a margin takes: an answer in a moment, or none. */
+export const SMALL_BUDGET: Budget = { steps: 100_000 }
 
 /** Counts what a search has cost. */
 export class Purse {

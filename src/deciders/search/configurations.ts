@@ -12,7 +12,7 @@ export interface Configuration {
   readonly bits: Int32Array
   /** its path, a node of `Paths` */
   node: number
-  /** unsure writes that its path used, where they are not among the slots, in order of use */
+  /** unsure writes that its path used, in order of use, where the search goes by them */
   used: readonly number[]
 }
 

@@ -7,6 +7,9 @@ import type { Counting } from '../../order/counting.js'
 import type { Purse } from './budget.js'
 import { type SweepOutcome, sweep } from './sweep.js'
 
+/** An order, that there is none, or that the purse was empty before either was clear. */
+export type SearchOutcome = Exclude<SweepOutcome, { found: 'overuse' }>
+
 /** Configurations kept where only an order is looked for, not its absence. */
 const BREADTH = 200
 
@@ -18,11 +21,18 @@ const REACH = 500
  * once they have begun: without an order then, there is none. Then for an order that uses each only once, among few
  * configurations. Only then those values are counted of which too many were used.
  */
-export function* search(counting: Counting, values: Values, purse: Purse): Generator<void, SweepOutcome> {
+export function* search(counting: Counting, values: Values, purse: Purse): Generator<void, SearchOutcome> {
   const counted = new Set<number>()
-  let outcome = yield* sweep(counting, values, { counted, countedFrom: 0 }, purse)
+  const all = { counted, countedFrom: 0 }
+  const few = { ...all, breadth: BREADTH }
+  if (counting.key.hasIncrements) {
+    // Each unsure increment counts here, and sums are many: look for an order first.
+    const thrifty = yield* sweep(counting, values, few, purse)
+    if (thrifty.found === 'order') return thrifty
+  }
+  let outcome = yield* sweep(counting, values, all, purse)
   if (outcome.found !== 'overuse') return outcome
-  const thrifty = yield* sweep(counting, values, { counted, countedFrom: 0, breadth: BREADTH }, purse)
+  const thrifty = yield* sweep(counting, values, few, purse)
   if (thrifty.found === 'order') return thrifty
   // Counting from shortly before the thrifty search got stuck is often enough to see that there is no order.
   const stuck = thrifty.found === 'none' || thrifty.found === 'spent' ? thrifty.step : 0
@@ -34,7 +44,7 @@ export function* search(counting: Counting, values: Values, purse: Purse): Gener
 }
 
 /** Runs a search to its end. */
-export function searchThrough(counting: Counting, values: Values, purse: Purse): SweepOutcome {
+export function searchThrough(counting: Counting, values: Values, purse: Purse): SearchOutcome {
   const steps = search(counting, values, purse)
   for (;;) {
     const next = steps.next()

@@ -221,6 +221,7 @@ class Sweep {
         this.#isSparing = false
         i = -1
       }
+      if (this.#breadth !== undefined && next.size >= 2 * this.#breadth) break
       if (!this.#purse.isTimeToLook()) continue
       if (this.#purse.isSpent()) return false
       yield
@@ -397,7 +398,8 @@ class Sweep {
     if (slot >= 0) {
       const isEndless = this.#step < this.#countedFrom && this.#isAlikeUnsure(w)
       if (!isEndless) commit[slot >> 5] |= 1 << (slot & 31)
-    } else {
+    }
+    if (this.#counting.key.acked[w] === 0 && (this.#breadth !== undefined || slot < 0)) {
       if (!one.used.includes(w)) one.used = [...one.used, w]
     }
     this.#take(one, commit)

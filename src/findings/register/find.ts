@@ -85,7 +85,7 @@ class Search {
     this.#values = values
     this.#operations = operations
     this.#tell = new Teller(counting.key)
-    this.versions = findVersions(counting.key)
+    this.versions = findVersions(counting.key, counting.resolved)
     const suspects = suspectVersions(counting, this.versions)
     const first = new Newer(counting, this.versions)
     let blames = blameAll(first, suspects)
