@@ -4,6 +4,7 @@
 import { createHash } from 'node:crypto'
 import { createReadStream } from 'node:fs'
 import { join } from 'node:path'
+import type { Budget } from '../deciders/search/budget.js'
 import { check } from '../findings/check.js'
 import { compareResults } from '../findings/compare.js'
 import type { Result } from '../findings/result.js'
@@ -19,6 +20,7 @@ import { jsonReport } from '../reports/json.js'
 import { ndjsonReport } from '../reports/ndjson.js'
 import { textReport } from '../reports/text.js'
 import { type ExitStatus, UsageError } from './exit.js'
+import type { BudgetOption } from './options.js'
 import { Progress } from './progress.js'
 import { readResult } from './read-result.js'
 import { type Terminal, write } from './terminal.js'
@@ -29,6 +31,7 @@ export interface CheckOptions {
   promises?: string
   clockError?: bigint
   keys?: string[]
+  budget?: BudgetOption
   format: 'text' | 'json' | 'ndjson'
   out?: string
   force?: boolean
@@ -68,7 +71,9 @@ export async function runCheck(
     ...(options.keys ? { keys: options.keys } : {}),
     everyKey: options.everyKey ?? false,
     counterexamples: options.out === undefined ? 0 : options.limit,
-    onProgress: (done, all) => progress.show('deciding', done, all),
+    newBudget: () => budgetOf(options.budget),
+    onProgress: (done, all, searched) =>
+      progress.show(searched === undefined ? 'deciding' : 'searching', done, all),
     signal: terminal.signal,
   })
   progress.clear()
@@ -93,6 +98,13 @@ export async function runCheck(
   await write(terminal.err, compareText({ ...comparison, misread: result.misread }, terminal))
   if (comparison.exit === 1) return 1
   return result.undecided.length > 0 ? 3 : 0
+}
+
+/** Time on this machine's clock, or steps; 10 s where nothing is said. */
+function budgetOf(option: BudgetOption = { ns: 10_000_000_000n }): Budget {
+  if ('steps' in option) return option
+  const until = process.hrtime.bigint() + option.ns
+  return { steps: Number.POSITIVE_INFINITY, isSpent: () => process.hrtime.bigint() > until }
 }
 
 /** The promises as typed. Equal names are an error: the result tells them apart by name. */

@@ -4,7 +4,7 @@
 import { Command, CommanderError } from 'commander'
 import { VERSION } from '../version.js'
 import { type ExitStatus, endOf } from './exit.js'
-import { collect, countOption, durationOption, oneOf } from './options.js'
+import { budgetOption, collect, countOption, durationOption, oneOf } from './options.js'
 import { type Terminal, write } from './terminal.js'
 
 /** The program with all its commands; `end` is told the status of the one that ran. */
@@ -38,6 +38,11 @@ export function buildProgram(terminal: Terminal, end: (status: ExitStatus) => vo
       durationOption,
     )
     .option('--keys <glob>', 'only keys that match (repeatable)', collect)
+    .option(
+      '--budget <budget>',
+      "how long to search for an order where reads don't say what they saw, per key (10s, 1000000steps)",
+      budgetOption,
+    )
     .option(
       '--format <format>',
       'text, json, or ndjson (findings alone, one a line)',

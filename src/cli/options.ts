@@ -16,6 +16,18 @@ export function durationOption(value: string): bigint {
   return ns
 }
 
+/** A time, in nanoseconds, or a number of steps. */
+export type BudgetOption = { readonly ns: bigint } | { readonly steps: number }
+
+export function budgetOption(value: string): BudgetOption {
+  const steps = /^([0-9]{1,15}) ?steps?$/.exec(value.trim())
+  if (steps) return { steps: Number(steps[1]) }
+  const ns = parseDuration(value)
+  if (ns === undefined)
+    throw new InvalidArgumentError('Expected a duration such as 10s, or steps such as 1000000steps.')
+  return { ns }
+}
+
 export function countOption(value: string): number {
   if (!/^[0-9]{1,9}$/.test(value)) throw new InvalidArgumentError('Expected a whole number of 0 or more.')
   return Number(value)

@@ -6,6 +6,7 @@ import { type Counting, countPairs } from '../order/counting.js'
 import type { KeyHistory } from '../order/key-history.js'
 import { isWrite } from '../order/roles.js'
 import { isUntested } from '../order/untested.js'
+import { findVersions } from '../order/versions.js'
 import { linearizable } from '../promises/linearizable.js'
 import type { PairRule } from '../promises/promise.js'
 import { decideCounter } from './counter.js'
@@ -90,6 +91,19 @@ function decideByVersions(counting: Counting): 'holds' | 'broken' | 'ambiguous' 
   return verdictOf({ ...counting, resolved: guessed }) === 'holds' ? 'holds' : 'ambiguous'
 }
 
+/**
+ * A register key whose versions show it broken, with what precedence resolves of its reads; undefined where only the
+ * search can tell.
+ */
+export function resolvedAsBroken(counting: Counting): Counting | undefined {
+  const { key } = counting
+  const isBroken = verdictOf(counting) === 'broken'
+  if (key.initial === NO_VALUE) return isBroken && !writesAbsence(key) ? counting : undefined
+  if (findVersions(key).ambiguous < 0) return isBroken ? counting : undefined
+  const resolved = { ...counting, resolved: resolveReads(counting).resolved }
+  return verdictOf(resolved) === 'broken' ? resolved : undefined
+}
+
 function verdictOf(counting: Counting): 'holds' | 'broken' | 'ambiguous' {
   const { verdict, versions } = decideRegister(counting)
   const bound = counting.rule.versions
@@ -133,8 +147,12 @@ function* isLinearizable(key: KeyHistory, values: Values, purse: Purse): Generat
 }
 
 function whySearch({ key }: Counting): string {
-  if (!key.hasIncrements) return 'reads of it could have seen any of several writes'
-  return key.hasWrites
-    ? 'it mixes increments with writes, cas or deletes'
-    : 'its increments are of several sizes'
+  if (key.hasIncrements) {
+    return key.hasWrites
+      ? 'it mixes increments with writes, cas or deletes'
+      : 'its increments are of several sizes'
+  }
+  return findVersions(key).ambiguous < 0
+    ? 'its start is not known'
+    : 'a value was written more than once, or a failed cas does not say what it saw'
 }

@@ -6,18 +6,18 @@
  * is left must still be broken by the decider's word; an undecided rest counts as mended.
  */
 
-import { decideKey } from '../deciders/decide-key.js'
+import { kindOfKey } from '../deciders/decide-key.js'
 import { INCREMENT, type Values } from '../history/columns.js'
-import { type Counting, counts } from '../order/counting.js'
+import type { Counting } from '../order/counting.js'
 import { sizeOf } from '../order/counts.js'
 import type { KeyHistory } from '../order/key-history.js'
-import { gatherOperations } from '../order/key-history.js'
 import { precedes } from '../order/precedence.js'
 import { isRead } from '../order/roles.js'
 import { findVersions } from '../order/versions.js'
+import { closedSubsets } from './closed-subsets.js'
+import { Judge } from './judge.js'
 import type { RawFinding } from './raw-finding.js'
 import { type Dependents, shrink } from './shrink.js'
-import { WithExtraValue } from './with-extra-value.js'
 
 export interface Counterexample {
   /** operation indices in input order */
@@ -33,10 +33,34 @@ export function findCounterexample(
   finding: RawFinding,
 ): Counterexample | undefined {
   const judge = new Judge(counting, values)
+  if (isSearched(counting)) return closedCounterexample(judge, finding)
   if (counting.key.hasIncrements) return counterCounterexample(judge, finding)
   const dependents = registerDependents(counting, finding)
   const evidence = finding.exhibits.map(({ operation }) => operation)
   const start = judge.isBroken(evidence) ? evidence : everything(counting.key)
+  if (!judge.isBroken(start)) return undefined
+  return { operations: shrink(start, (rest) => judge.isBroken(rest), dependents), initialCount: undefined }
+}
+
+/** Whether the key's reads do not all say what they saw, so that the evidence alone may not be enough. */
+function isSearched(counting: Counting): boolean {
+  return (
+    kindOfKey(counting.key) === 'mixed' ||
+    (!counting.key.hasIncrements && findVersions(counting.key).ambiguous >= 0)
+  )
+}
+
+/** From the evidence, with whatever may explain its reads, or from the whole key. */
+function closedCounterexample(judge: Judge, finding: RawFinding): Counterexample | undefined {
+  const dependents = closedSubsets(judge.counting, judge.values)
+  const isClosed = (operations: ReadonlySet<number>): boolean =>
+    judge.key.operation.every((i) => {
+      if (operations.has(i)) return true
+      for (const _ of dependents(i, operations)) return false
+      return true
+    })
+  const evidence = new Set(finding.exhibits.map(({ operation }) => operation))
+  const start = isClosed(evidence) && judge.isBroken(evidence) ? [...evidence] : everything(judge.key)
   if (!judge.isBroken(start)) return undefined
   return { operations: shrink(start, (rest) => judge.isBroken(rest), dependents), initialCount: undefined }
 }
@@ -77,57 +101,6 @@ function counterCounterexample(judge: Judge, finding: RawFinding): Counterexampl
 
 function everything(key: KeyHistory): number[] {
   return Array.from(key.operation).sort((a, b) => a - b)
-}
-
-/** Decides subsets of one key under one promise. */
-class Judge {
-  readonly counting: Counting
-  readonly key: KeyHistory
-  values: Values
-  readonly #own: Values
-  readonly #local: Map<number, number>
-  #initial: number | undefined
-
-  constructor(counting: Counting, values: Values) {
-    this.counting = counting
-    this.key = counting.key
-    this.values = values
-    this.#own = values
-    this.#local = new Map(Array.from(this.key.operation, (i, p) => [i, p]))
-  }
-
-  localOf(operation: number): number {
-    return this.#local.get(operation) ?? -1
-  }
-
-  /** Sets the count that subsets start from; undefined: the key's own initial value. */
-  start(initialCount: bigint | undefined): void {
-    if (initialCount === undefined) {
-      this.values = this.#own
-      this.#initial = undefined
-      return
-    }
-    const extended = new WithExtraValue(this.#own, initialCount.toString())
-    this.values = extended
-    this.#initial = extended.extraId
-  }
-
-  isBroken(operations: Iterable<number>): boolean {
-    const sorted = Int32Array.from(operations).sort()
-    const part = gatherOperations(this.key.history, sorted, this.key.keyId, this.key.clockErrorNs)
-    const alone = this.#initial === undefined ? part : { ...part, initial: this.#initial }
-    return decideKey(alone, this.values, this.counting.rule).verdict === 'broken'
-  }
-
-  /** The first increment that does not certainly come before local read `q`, or -1. */
-  incrementNotBefore(q: number): number {
-    const { key } = this
-    for (let i = 0; i < key.n; i++) {
-      if (key.kind[i] === INCREMENT && i !== q && !counts(this.counting, i, 'write', q, 'read'))
-        return key.operation[i]
-    }
-    return -1
-  }
 }
 
 /** With a write go its reads and the cas that found it; a torn or refused value goes with any of its sources. */

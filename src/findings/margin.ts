@@ -3,9 +3,10 @@
  * session order and pairs on one clock break it by themselves.
  */
 import { decideKey } from '../deciders/decide-key.js'
+import { SMALL_BUDGET } from '../deciders/search/budget.js'
 import type { History } from '../history/columns.js'
 import { type Counting, countPairs } from '../order/counting.js'
-import { gatherKey, type KeyIndex } from '../order/key-history.js'
+import { gatherKey, gatherOperations, type KeyIndex } from '../order/key-history.js'
 import { isRead, isWrite } from '../order/roles.js'
 import type { PairRule } from '../promises/promise.js'
 import { START, Tallies } from './counter/tallies.js'
@@ -114,6 +115,14 @@ export function keyMargin(
   const isBroken = (error: bigint): boolean =>
     decideKey(gatherKey(history, index, keyId, error), history.values, rule).verdict === 'broken'
   return largest(known > clockErrorNs && isBroken(known) ? known : clockErrorNs, isBroken)
+}
+
+/** The largest clock error under which these operations are still broken by themselves. */
+export function subsetMargin({ key, rule }: Counting, operations: Int32Array): Margin {
+  return largest(key.clockErrorNs, (clockErrorNs) => {
+    const part = gatherOperations(key.history, operations, key.keyId, clockErrorNs)
+    return decideKey(part, key.history.values, rule, SMALL_BUDGET).verdict === 'broken'
+  })
 }
 
 /** The largest number from `from` on for which a falling predicate, true at `from`, is true. Gallops, then bisects. */

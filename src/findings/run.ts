@@ -2,15 +2,18 @@
  * Decides every key under every promise that is asked for it, and finds what broke; then makes the result.
  */
 import { decideCausal } from '../deciders/causal/decide.js'
-import { decideKey, kindOfKey } from '../deciders/decide-key.js'
+import { decideKeyInSteps, kindOfKey, resolvedAsBroken } from '../deciders/decide-key.js'
 import type { Decision } from '../deciders/decision.js'
+import { type Budget, DEFAULT_BUDGET, Purse } from '../deciders/search/budget.js'
 import type { History } from '../history/columns.js'
 import { type Counting, countPairs } from '../order/counting.js'
+import { findCounts } from '../order/counts.js'
 import { gatherKey, type KeyHistory, type KeyIndex } from '../order/key-history.js'
 import { keyGlob } from '../promises/glob.js'
 import type { CausalPromiseRequest, KeyPromiseRequest, PromiseRequest } from '../promises/request.js'
 import { VERSION } from '../version.js'
 import { findCausal } from './causal.js'
+import { findConflicts } from './conflict.js'
 import { findCounter } from './counter/find.js'
 import { findLostUpdateFindings } from './lost-updates.js'
 import { findingMargin, greater, keyMargin, type Margin, ORDINARY_CLOCK_ERROR_NS } from './margin.js'
@@ -32,8 +35,10 @@ export interface CheckRequest {
   readonly everyKey?: boolean
   /** make counterexamples for the findings in so many paragraphs of a report, the worst first; default none */
   readonly counterexamples?: number
-  /** told now and then how many of the keys are decided */
-  onProgress?(done: number, total: number): void
+  /** makes the budget of one key's searches; default: some seconds' worth of steps, the same on every machine */
+  newBudget?(): Budget
+  /** told now and then how many of the keys are decided, and which one is being searched */
+  onProgress?(done: number, total: number, searched?: string): void
   /** stops the check: what is not decided by then is undecided, and the result says so */
   readonly signal?: AbortSignal
 }
@@ -87,7 +92,12 @@ export class Run {
       const asked = claims.filter(({ matches }) => matches(name)).map(({ promise }) => promise)
       if (asked.length === 0) continue
       if (signal?.aborted) this.#interrupted = true
-      this.#decide(keyId, name, asked)
+      const steps = this.#decide(keyId, name, asked)
+      for (let next = steps.next(); !next.done; next = steps.next()) {
+        onProgress?.(keyId, total, name)
+        await breathe()
+        if (signal?.aborted) this.#interrupted = true
+      }
       since += offset[keyId + 1] - offset[keyId]
       if (since < BREATHE) continue
       since = 0
@@ -122,15 +132,15 @@ export class Run {
       this.findings.push({ promise: name, finding })
   }
 
-  #decide(keyId: number, name: string, asked: readonly KeyPromiseRequest[]): void {
+  /** Decides one key under all that is asked of it; yields while it searches. */
+  *#decide(keyId: number, name: string, asked: readonly KeyPromiseRequest[]): Generator<void, void> {
+    const purse = new Purse(this.#request.newBudget?.() ?? DEFAULT_BUDGET)
     const key = gatherKey(this.#history, this.#index, keyId, this.#clockErrorNs)
     const verdicts: KeyResult['verdicts'] = {}
     const untested: string[] = []
     const margins: Record<string, string> = {}
     for (const promise of asked) {
-      const decision: Decision = this.#interrupted
-        ? { verdict: 'undecided', reason: 'the check was interrupted before this key' }
-        : decideKey(key, this.#history.values, promise.rule)
+      const decision = yield* this.#decidePromise(key, promise, purse)
       const tally = this.#tallies.get(promise.name)!
       if (decision.verdict === 'left-out') {
         tally.leftOut++
@@ -173,6 +183,16 @@ export class Run {
     }
   }
 
+  *#decidePromise(key: KeyHistory, { rule }: KeyPromiseRequest, purse: Purse): Generator<void, Decision> {
+    const steps = decideKeyInSteps(key, this.#history.values, rule, purse)
+    while (!this.#interrupted) {
+      const next = steps.next()
+      if (next.done) return next.value
+      yield
+    }
+    return { verdict: 'undecided', reason: 'the check was interrupted before this key was decided' }
+  }
+
   /** The key's margin under a promise, from those of its findings. */
   #margin(key: KeyHistory, { rule }: KeyPromiseRequest, found: readonly RawFinding[]): Margin {
     const best = found.reduce<Margin>(
@@ -185,6 +205,7 @@ export class Run {
   #find(key: KeyHistory, { rule }: KeyPromiseRequest): RawFinding[] {
     const counting = countPairs(key, rule)
     return this.#findOn(counting).map((finding) => {
+      if (finding.margin !== undefined) return finding
       const margin = findingMargin(counting, this.#index, finding)
       return margin === undefined ? finding : { ...finding, margin }
     })
@@ -193,15 +214,24 @@ export class Run {
   #findOn(counting: Counting): RawFinding[] {
     const { key, rule } = counting
     const { offset, operations } = this.#index
+    const { values } = this.#history
     if (rule.name === 'no-lost-updates') return findLostUpdateFindings(counting)
-    if (kindOfKey(key) === 'register') {
-      return findRegister(
-        counting,
-        this.#history.values,
-        operations.subarray(offset[key.keyId], offset[key.keyId + 1]),
-      )
+    switch (kindOfKey(key)) {
+      case 'register': {
+        const told = resolvedAsBroken(counting)
+        if (!told) return findConflicts(counting, values)
+        return findRegister(told, values, operations.subarray(offset[key.keyId], offset[key.keyId + 1]))
+      }
+      case 'counter': {
+        const found = findCounter(counting, values)
+        const isTold = found.some(({ kind }) => kind !== 'order-conflict')
+        return isTold || findCounts(key, values).trouble !== 'several-sizes'
+          ? found
+          : findConflicts(counting, values)
+      }
+      case 'mixed':
+        return findConflicts(counting, values)
     }
-    return findCounter(counting, this.#history.values)
   }
 
   result(findings: Finding[]): Result {

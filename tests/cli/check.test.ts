@@ -44,9 +44,20 @@ describe('exit statuses', () => {
   })
 
   it('3 when nothing is broken and something undecided', async () => {
-    const { status, out } = await misread(['check', file('twice.ndjson', storyText('A w1 & B w1 | C r1'))])
+    const records = [
+      { op: 'write', value: 5 },
+      { op: 'increment', by: 2 },
+      { op: 'read', value: 7 },
+    ]
+    const mixed = records.map((record, i) =>
+      JSON.stringify({ client: 'gate-1', key: 'sailing/3', ...record, start: 2 * i, end: 2 * i + 1 }),
+    )
+    const path = file('mixed.ndjson', `${mixed.join('\n')}\n`)
+    const { status, out } = await misread(['check', path, '--budget', '1step'])
     expect(status).toBe(3)
-    expect(out).toContain('written more than once')
+    expect(out).toContain('it mixes increments with writes, cas or deletes, and the search met its budget')
+    expect((await misread(['check', path])).status).toBe(0)
+    expect((await misread(['check', path, '--budget', '3 parsecs'])).err).toContain('Expected a duration')
   })
 
   it('130 when it is stopped, with what was found till then', async () => {

@@ -19,10 +19,11 @@ export class Purse {
   /** placements tried */
   spent = 0
   readonly #budget: Budget
-  #nextLook = LOOK
+  #nextLook: number
 
   constructor(budget: Budget) {
     this.#budget = budget
+    this.#nextLook = Math.min(LOOK, budget.steps)
   }
 
   /** True when it is time to let others work, and to look whether to stop. */

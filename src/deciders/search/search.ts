@@ -28,14 +28,14 @@ export function* search(counting: Counting, values: Values, purse: Purse): Gener
   if (counting.key.hasIncrements) {
     // Each unsure increment counts here, and sums are many: look for an order first.
     const thrifty = yield* sweep(counting, values, few, purse)
-    if (thrifty.found === 'order') return thrifty
+    if (thrifty.found === 'order' || thrifty.found === 'spent') return thrifty
   }
   let outcome = yield* sweep(counting, values, all, purse)
   if (outcome.found !== 'overuse') return outcome
   const thrifty = yield* sweep(counting, values, few, purse)
-  if (thrifty.found === 'order') return thrifty
+  if (thrifty.found === 'order' || thrifty.found === 'spent') return thrifty
   // Counting from shortly before the thrifty search got stuck is often enough to see that there is no order.
-  const stuck = thrifty.found === 'none' || thrifty.found === 'spent' ? thrifty.step : 0
+  const stuck = thrifty.found === 'none' ? thrifty.step : 0
   for (let reach = REACH; outcome.found === 'overuse'; reach *= 4) {
     for (const value of outcome.values) counted.add(value)
     outcome = yield* sweep(counting, values, { counted, countedFrom: Math.max(0, stuck - reach) }, purse)
