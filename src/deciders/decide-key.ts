@@ -98,7 +98,7 @@ function decideByVersions(counting: Counting): 'holds' | 'broken' | 'ambiguous' 
 export function resolvedAsBroken(counting: Counting): Counting | undefined {
   const { key } = counting
   const isBroken = verdictOf(counting) === 'broken'
-  if (key.initial === NO_VALUE) return isBroken && !writesAbsence(key) ? counting : undefined
+  if (key.initial === NO_VALUE) return isBroken ? counting : undefined
   if (findVersions(key).ambiguous < 0) return isBroken ? counting : undefined
   const resolved = { ...counting, resolved: resolveReads(counting).resolved }
   return verdictOf(resolved) === 'broken' ? resolved : undefined
@@ -111,7 +111,8 @@ function verdictOf(counting: Counting): 'holds' | 'broken' | 'ambiguous' {
   return readsTooFarBehind(counting, versions, bound).length > 0 ? 'broken' : verdict
 }
 
-function writesAbsence(key: KeyHistory): boolean {
+/** Whether absence was written, or offered: a read of it then does not tell whether the key began absent. */
+export function writesAbsence(key: KeyHistory): boolean {
   return key.offered.has(NULL_VALUE) || key.value.some((value, p) => value === NULL_VALUE && isWrite(key, p))
 }
 

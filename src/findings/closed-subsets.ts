@@ -28,7 +28,9 @@ export function closedSubsets(counting: Counting, values: Values): Dependents {
     for (const other of among) {
       const r = local.get(other)!
       if (!finds(counting, r, needsNumbers)) continue
-      const isOut = precedes(key, r, w) || (overwritten !== undefined && overwritten[w] < key.start[r])
+      const isOut =
+        (precedes(key, r, w) && (rule.readWrite === 'all' || saysWhatItSaw(counting, r))) ||
+        (overwritten !== undefined && overwritten[w] < key.start[r])
       if (key.hasIncrements) {
         if (!isOut) yield other
       } else if (mayHaveSeen(counting, w, r) && (!isOut || !isWrittenAmong(r, among))) {
@@ -41,6 +43,11 @@ export function closedSubsets(counting: Counting, values: Values): Dependents {
 /** Whether what was there mattered to the operation. */
 function finds({ key }: Counting, p: number, needsNumbers: boolean): boolean {
   return isRead(key, p) || key.kind[p] === CAS || (needsNumbers && key.kind[p] === INCREMENT)
+}
+
+/** A failed cas that does not say so may stand after a write that it precedes, where the promise does not count that. */
+function saysWhatItSaw({ key }: Counting, p: number): boolean {
+  return !isRead(key, p) || readValue(key, p) !== NO_VALUE
 }
 
 /** Whether a write's value is one that the operation may have found. */

@@ -28,14 +28,15 @@ const MOST = 10
 const WINDOW = 48
 
 /**
- * The findings of a key that is broken by the search's word; at least one. After each, its blamed read is set aside
+ * The findings of a key that is broken by the search's word; at least one. `operations` are all of the key's operation
+ * indices, refused ones too. After each finding, its blamed read is set aside
  * and what is left is decided again.
  */
-export function findConflicts(counting: Counting, values: Values): RawFinding[] {
+export function findConflicts(counting: Counting, values: Values, operations: Int32Array): RawFinding[] {
   const findings: RawFinding[] = []
   let rest: KeyHistory | undefined = counting.key
   while (rest && findings.length < MOST) {
-    const finding = findConflict(countPairs(rest, counting.rule), values)
+    const finding = findConflict(countPairs(rest, counting.rule), values, operations)
     if (!finding) break
     findings.push(finding)
     rest = without(rest, finding.blamed)
@@ -47,14 +48,21 @@ export function findConflicts(counting: Counting, values: Values): RawFinding[] 
 function without(key: KeyHistory, blamed: number): KeyHistory | undefined {
   const operations = key.operation.filter((i) => i !== blamed).sort()
   if (operations.length === key.n) return undefined
-  return { ...gatherOperations(key.history, operations, key.keyId, key.clockErrorNs), offered: key.offered }
+  return partOf(key, operations)
 }
 
-function findConflict(counting: Counting, values: Values): RawFinding | undefined {
-  const operations = smallestConflict(counting, values)
-  if (!operations) return undefined
-  const named = nameByVersions(counting, values, operations) ?? tellConflict(counting, operations)
-  return { ...named, margin: subsetMargin(counting, Int32Array.from(operations)) }
+/** Some operations of a key, still the kind of key that it is. */
+function partOf(key: KeyHistory, operations: Int32Array): KeyHistory {
+  const part = gatherOperations(key.history, operations, key.keyId, key.clockErrorNs)
+  const { offered, hasIncrements, hasWrites } = key
+  return { ...part, offered, hasIncrements, hasWrites }
+}
+
+function findConflict(counting: Counting, values: Values, all: Int32Array): RawFinding | undefined {
+  const conflict = smallestConflict(counting, values)
+  if (!conflict) return undefined
+  const named = nameByVersions(counting, values, conflict, all) ?? tellConflict(counting, conflict)
+  return { ...named, margin: subsetMargin(counting, Int32Array.from(conflict)) }
 }
 
 /** Operations that are broken by themselves and irreducibly so, in input order, or undefined. */
@@ -86,17 +94,16 @@ function smallestConflict(counting: Counting, values: Values): number[] | undefi
 function nameByVersions(
   counting: Counting,
   values: Values,
-  operations: readonly number[],
+  conflict: readonly number[],
+  all: Int32Array,
 ): RawFinding | undefined {
   const { key, rule } = counting
   if (key.hasIncrements || key.initial === NO_VALUE) return undefined
-  const sorted = Int32Array.from(operations).sort()
-  const part = { ...gatherOperations(key.history, sorted, key.keyId, key.clockErrorNs), offered: key.offered }
-  const plain = countPairs(part, rule)
+  const plain = countPairs(partOf(key, Int32Array.from(conflict)), rule)
   const { resolved, isComplete } = resolveReads(plain)
   const resolvedCounting = { ...plain, resolved }
   if (!isComplete || decideRegister(resolvedCounting).verdict !== 'broken') return undefined
-  return findRegister(resolvedCounting, values, sorted)[0]
+  return findRegister(resolvedCounting, values, all)[0]
 }
 
 function tellConflict({ key }: Counting, operations: readonly number[]): RawFinding {

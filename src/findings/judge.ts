@@ -45,7 +45,15 @@ export class Judge {
     const sorted = Int32Array.from(operations).sort()
     const part = gatherOperations(this.key.history, sorted, this.key.keyId, this.key.clockErrorNs)
     const alone = this.#initial === undefined ? part : { ...part, initial: this.#initial }
-    return decideKey(alone, this.values, this.counting.rule, SMALL_BUDGET).verdict === 'broken'
+    if (!this.#isBrokenKey(alone)) return false
+    // What kind a key is goes by all of its records: a part must be broken as what the whole is, too.
+    const { hasIncrements, hasWrites } = this.key
+    if (alone.hasIncrements === hasIncrements && alone.hasWrites === hasWrites) return true
+    return this.#isBrokenKey({ ...alone, hasIncrements, hasWrites })
+  }
+
+  #isBrokenKey(key: KeyHistory): boolean {
+    return decideKey(key, this.values, this.counting.rule, SMALL_BUDGET).verdict === 'broken'
   }
 
   /** The first increment that does not certainly come before local read `q`, or -1. */

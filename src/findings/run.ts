@@ -2,10 +2,10 @@
  * Decides every key under every promise that is asked for it, and finds what broke; then makes the result.
  */
 import { decideCausal } from '../deciders/causal/decide.js'
-import { decideKeyInSteps, kindOfKey, resolvedAsBroken } from '../deciders/decide-key.js'
+import { decideKeyInSteps, kindOfKey, resolvedAsBroken, writesAbsence } from '../deciders/decide-key.js'
 import type { Decision } from '../deciders/decision.js'
 import { type Budget, DEFAULT_BUDGET, Purse } from '../deciders/search/budget.js'
-import type { History } from '../history/columns.js'
+import { CAS, type History, NO_VALUE, NULL_VALUE } from '../history/columns.js'
 import { type Counting, countPairs } from '../order/counting.js'
 import { findCounts } from '../order/counts.js'
 import { gatherKey, type KeyHistory, type KeyIndex } from '../order/key-history.js'
@@ -215,22 +215,25 @@ export class Run {
     const { key, rule } = counting
     const { offset, operations } = this.#index
     const { values } = this.#history
+    const all = operations.subarray(offset[key.keyId], offset[key.keyId + 1])
     if (rule.name === 'no-lost-updates') return findLostUpdateFindings(counting)
     switch (kindOfKey(key)) {
       case 'register': {
         const told = resolvedAsBroken(counting)
-        if (!told) return findConflicts(counting, values)
-        return findRegister(told, values, operations.subarray(offset[key.keyId], offset[key.keyId + 1]))
+        const found = told ? findRegister(told, values, all) : []
+        const sure =
+          key.initial === NO_VALUE && writesAbsence(key) ? found.filter(isNotOfAbsence(key)) : found
+        return sure.length > 0 ? sure : findConflicts(counting, values, all)
       }
       case 'counter': {
         const found = findCounter(counting, values)
         const isTold = found.some(({ kind }) => kind !== 'order-conflict')
         return isTold || findCounts(key, values).trouble !== 'several-sizes'
           ? found
-          : findConflicts(counting, values)
+          : findConflicts(counting, values, all)
       }
       case 'mixed':
-        return findConflicts(counting, values)
+        return findConflicts(counting, values, all)
     }
   }
 
@@ -271,6 +274,11 @@ export class Run {
       exit: this.#interrupted ? 130 : isBroken ? 1 : isUndecided ? 3 : 0,
     }
   }
+}
+
+/** A key may have begun absent: a read of absence is not to blame by itself. */
+function isNotOfAbsence({ history }: KeyHistory): (finding: RawFinding) => boolean {
+  return ({ blamed }) => history.kind[blamed] === CAS || history.value[blamed] !== NULL_VALUE
 }
 
 /** Findings that an ordinary fleet's clocks could explain need a word. */

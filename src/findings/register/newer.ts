@@ -90,13 +90,13 @@ export class Newer {
   }
 
   /**
-   * The versions newer than `version` whose write began before the last read of `version` did (later ones prove
+   * The versions newer than `version` whose write did not begin after the last read of `version` did (later ones prove
    * nothing), the nearest first, up to REACH_LIMIT of them.
    */
   reach(version: number): Reach {
     let reach = this.#reaches.get(version)
     if (!reach) {
-      reach = this.#search(version, this.#lastStart(version))
+      reach = this.#search(version, justAfter(this.#lastStart(version)))
       this.#reaches.set(version, reach)
     }
     return reach
@@ -168,10 +168,11 @@ export class Newer {
 
   /** The links that show `newer` to be newer than `version`, from the latter to the former. */
   path(version: number, newer: number): Link[] {
-    const { from } = this.reach(version)
+    let { from } = this.reach(version)
+    if (!from.has(newer)) from = this.#search(version, Number.POSITIVE_INFINITY).from
     const steps: number[] = [newer]
     for (let v = newer; v !== version; ) {
-      v = from.get(v)!
+      v = from.get(v) ?? version
       steps.push(v)
     }
     steps.reverse()
@@ -184,7 +185,7 @@ export class Newer {
     if (later < 0 || v === w) return false
     if (earlier < 0 || counts(this.counting, earlier, 'write', later, 'write')) return true
     const began = this.counting.key.start[later]
-    const reach = began < this.#lastStart(v) ? this.reach(v) : this.#search(v, began + 0.5)
+    const reach = began <= this.#lastStart(v) ? this.reach(v) : this.#search(v, justAfter(began))
     return reach.from.has(w)
   }
 
@@ -275,4 +276,9 @@ class SearchOrder {
     }
     return low
   }
+}
+
+/** A limit that a start at `time` lies below and every later one does not. Times here are halves, and whole when large. */
+function justAfter(time: number): number {
+  return time + (Math.abs(time) < 2 ** 51 ? 0.25 : 1)
 }
