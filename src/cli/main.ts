@@ -100,6 +100,21 @@ export function buildProgram(terminal: Terminal, end: (status: ExitStatus) => vo
       const { runConvert } = await import('./convert.js')
       end(await runConvert(files, options, terminal))
     })
+  program
+    .command('rehearse')
+    .description('record a history against a simulated store, with faults of your choice (docs/rehearsal.md)')
+    .option('--scenario <name>', 'a scenario by its name, or a scenario file (.yaml, .json)')
+    .option('--seed <n>', 'chance: the same seed makes the same history', countOption, 1)
+    .option('--lasts <duration>', 'how long clients go on, whatever the scenario says (10m)', durationOption)
+    .option('--out <dir>', 'folder for history.ndjson, truth.ndjson and scenario.yaml')
+    .option('--force', 'let --out write over what an earlier rehearsal left there')
+    .option('--list', 'list the scenarios that are known by name')
+    .option('--print', 'print the scenario, to start a file of your own from')
+    .addHelpText('after', '\nExample:\n  misread rehearse --scenario failover --seed 7 --out rehearsal\n')
+    .action(async (options) => {
+      const { runRehearse } = await import('./rehearse.js')
+      end(await runRehearse(options, terminal))
+    })
   return program
 }
 

@@ -5,6 +5,7 @@ import { historyPublication } from './history-publication.js'
 import { mappingPublication } from './mapping-publication.js'
 import { publish } from './publish.js'
 import { resultPublication } from './result-publication.js'
+import { scenarioPublication } from './scenario-publication.js'
 import { surveyPublication } from './survey-publication.js'
 
 for (const publication of [
@@ -13,6 +14,7 @@ for (const publication of [
   historyPublication,
   mappingPublication,
   resultPublication,
+  scenarioPublication,
   surveyPublication,
 ])
   publish(publication)

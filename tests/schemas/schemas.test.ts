@@ -5,6 +5,7 @@ import { historyPublication } from './history-publication.js'
 import { mappingPublication } from './mapping-publication.js'
 import { published, schemaText } from './publish.js'
 import { resultPublication } from './result-publication.js'
+import { scenarioPublication } from './scenario-publication.js'
 import { surveyPublication } from './survey-publication.js'
 
 describe('the published JSON Schemas', () => {
@@ -14,6 +15,7 @@ describe('the published JSON Schemas', () => {
     historyPublication,
     mappingPublication,
     resultPublication,
+    scenarioPublication,
     surveyPublication,
   ])('$file is what the code defines', (publication) => {
     expect(published(publication), 'run npm run schemas').toBe(schemaText(publication))

@@ -1,0 +1,74 @@
+/** Plays a rehearsal in memory, and checks what it recorded. */
+
+import { check } from '../../src/findings/check.js'
+import type { Result } from '../../src/findings/result.js'
+import { readHistory } from '../../src/history/read.js'
+import { textSource } from '../../src/history/source.js'
+import { parsePromise } from '../../src/promises/parse-request.js'
+import { type Account, rehearse } from '../../src/rehearsal/rehearse.js'
+import { type Scenario, type ScenarioText, scenarioSchema } from '../../src/rehearsal/scenario-schema.js'
+import { SCENARIOS } from '../../src/rehearsal/scenarios.js'
+
+/** A line of the truth about an operation. */
+export interface TruthLine {
+  readonly line: number
+  readonly client: string
+  readonly op: string
+  readonly key: string
+  readonly effect: string
+  readonly cause: string
+  readonly fault?: number
+  readonly provable?: boolean
+  readonly carriedOut?: boolean
+}
+
+export interface Played {
+  readonly history: string
+  readonly truth: string
+  readonly account: Account
+  /** lines about operations */
+  readonly hits: readonly TruthLine[]
+}
+
+export function scenario(text: Omit<ScenarioText, 'rehearsal'>): Scenario {
+  return scenarioSchema.parse({ rehearsal: 1, ...text })
+}
+
+export function named(name: string): Scenario {
+  return scenarioSchema.parse(SCENARIOS.find((each) => each.name === name)!.text)
+}
+
+export function play(what: Scenario, seed: number): Played {
+  const run = rehearse(what, seed)
+  let history = ''
+  let truth = ''
+  for (;;) {
+    const step = run.next()
+    if (step.done) {
+      const lines = truth.trimEnd().split('\n')
+      const hits = lines.map((line) => JSON.parse(line)).filter(({ effect }) => effect !== undefined)
+      return { history, truth, account: step.value, hits }
+    }
+    history += step.value.history
+    truth += step.value.truth
+  }
+}
+
+export async function checked(
+  history: string,
+  promise = 'linearizable',
+  clockErrorNs?: bigint,
+): Promise<Result> {
+  const source = textSource('history.ndjson', history)
+  const { result } = await check(await readHistory([source]), [source], {
+    promises: [parsePromise(promise)],
+    everyKey: true,
+    ...(clockErrorNs === undefined ? {} : { clockErrorNs }),
+  })
+  return result
+}
+
+/** What is wrong with an answer or a change, as opposed to one that nobody knows of. */
+export function isHarm({ effect }: TruthLine): boolean {
+  return effect !== 'unsure' && effect !== 'late'
+}
