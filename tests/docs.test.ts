@@ -34,7 +34,8 @@ describe('the documentation', () => {
   it('names only commands, options and scripts that exist', async () => {
     const { scripts } = JSON.parse(readFileSync('package.json', 'utf8'))
     let help = ''
-    for (const command of ['check', 'survey', 'convert', 'rehearse']) help += (await misread([command, '--help'])).out
+    for (const command of ['check', 'survey', 'convert', 'rehearse'])
+      help += (await misread([command, '--help'])).out
     for (const [page, text] of texts) {
       for (const [, script] of text.matchAll(/npm run ([a-z]+)/g))
         expect(Object.keys(scripts), page).toContain(script)

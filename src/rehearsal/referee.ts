@@ -18,6 +18,8 @@ type Done = Extract<Answer, { type: 'done' }>
 export class Referee {
   readonly #scheduler: Scheduler
   readonly #output: Output
+  /** what makes replication slow now, if anything does */
+  readonly #slowness: () => FaultRun | undefined
   readonly #zones = new Map<Key, Zones>()
   readonly #tallies = new Map<Key, Tally>()
   /** the last thing that threw a change of the key away, made one twice or answered what was out of date */
@@ -28,9 +30,11 @@ export class Referee {
     output: Output,
     keys: ReadonlyMap<Key, Cell>,
     { returnsCount, timeout }: Scenario['workload'],
+    slowness: () => FaultRun | undefined,
   ) {
     this.#scheduler = scheduler
     this.#output = output
+    this.#slowness = slowness
     for (const [key, { version }] of keys) {
       if (key.kind === 'sailing') this.#tallies.set(key, new Tally(returnsCount))
       else this.#zones.set(key, new Zones(version, timeout))
@@ -49,7 +53,7 @@ export class Referee {
       this.#hit(operation, { effect: 'repeated', cause: 'retry', more: { times: operation.timesDone } })
     }
     if (!operation.isOpen && operation.timesDone === 1)
-      this.#hit(operation, { effect: 'late', ...hindrance(operation) })
+      this.#hit(operation, { effect: 'late', ...this.#hindrance(operation) })
   }
 
   /** What a leader had carried out will be thrown away, and who asks elsewhere does not see it. */
@@ -72,7 +76,7 @@ export class Referee {
     if (outcome === 'unsure') {
       this.#hit(operation, {
         effect: 'unsure',
-        ...hindrance(operation),
+        ...this.#hindrance(operation),
         more: operation.kind === 'read' ? {} : { carriedOut: operation.timesDone > 0 },
       })
       return
@@ -136,8 +140,10 @@ export class Referee {
   #hit(operation: Operation, hit: Hit): void {
     this.#output.hit(operation, hit, this.#scheduler.now)
   }
-}
 
-function hindrance({ hinderedBy }: Operation): { cause: string; fault?: number } {
-  return hinderedBy ? causedBy(hinderedBy) : { cause: 'slow' }
+  /** What kept the answer from its client. */
+  #hindrance({ hinderedBy }: Operation): { cause: string; fault?: number } {
+    const fault = hinderedBy ?? this.#slowness()
+    return fault ? causedBy(fault) : { cause: 'slow' }
+  }
 }

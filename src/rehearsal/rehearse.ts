@@ -48,7 +48,7 @@ export function* rehearse(
   const network = new Network(scheduler, networkRandom, store, store.nodes)
   const keys = makeKeys(scenario)
   const cells = Array.from(keys.values())
-  const referee = new Referee(scheduler, output, keys, workload)
+  const referee = new Referee(scheduler, output, keys, workload, () => network.slow.keys().next().value)
   const mark = (text: string, from: number, isInstant = false): void =>
     output.mark(text, from, isInstant ? undefined : scheduler.now)
   const { clients } = workload

@@ -1,7 +1,7 @@
 /**
  * The scenarios that are known by name. A name's text is a scenario file like any other.
  */
-import { type Scenario, type ScenarioText, scenarioSchema } from './scenario-schema.js'
+import type { ScenarioText } from './scenario-schema.js'
 
 export interface NamedScenario {
   readonly name: string
@@ -180,9 +180,3 @@ export const SCENARIOS: readonly NamedScenario[] = [
     },
   },
 ]
-
-/** A scenario by its name. */
-export function namedScenario(name: string): Scenario | undefined {
-  const found = SCENARIOS.find((scenario) => scenario.name === name)
-  return found && scenarioSchema.parse(found.text)
-}

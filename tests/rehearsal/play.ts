@@ -58,8 +58,9 @@ export async function checked(
   history: string,
   promise = 'linearizable',
   clockErrorNs?: bigint,
+  name = 'history.ndjson',
 ): Promise<Result> {
-  const source = textSource('history.ndjson', history)
+  const source = textSource(name, history)
   const { result } = await check(await readHistory([source]), [source], {
     promises: [parsePromise(promise)],
     everyKey: true,
