@@ -11,6 +11,9 @@ import type { Scheduler } from './scheduler.js'
 import type { Store } from './store.js'
 import type { Vessels } from './vessels.js'
 
+/** Between closing reads, ns: no request begins at the instant that another ends. */
+const BREATH = 1000
+
 export interface ClientParts {
   readonly scheduler: Scheduler
   readonly random: Random
@@ -20,7 +23,7 @@ export interface ClientParts {
   readonly vessels: Vessels
   readonly workload: Scenario['workload']
   readonly keys: readonly Key[]
-  /** so many operations have ended, for those who watch */
+  /** called for each operation that ends */
   readonly onEnd: () => void
 }
 
@@ -127,6 +130,6 @@ export class Client {
     if (done && operation.key.kind === 'lease') this.#leases.set(operation.key, done.cell.version.text)
     onEnd()
     if (scheduler.now < this.#parts.workload.lasts) this.#pause()
-    else this.#next()
+    else scheduler.after(BREATH, () => this.#next())
   }
 }

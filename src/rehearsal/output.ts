@@ -6,7 +6,8 @@
 import type { Clocks } from './clocks.js'
 import type { FaultRun } from './fault-run.js'
 import { clientName, hostName } from './names.js'
-import type { Answer, Operation } from './operation.js'
+import type { Answer, Cell, Key, Operation } from './operation.js'
+import type { HitEffect, TruthHit } from './truth-schema.js'
 
 /** Text that has been made since the last piece. */
 export interface Piece {
@@ -14,22 +15,8 @@ export interface Piece {
   readonly truth: string
 }
 
-/**
- * What befell an operation, in the words of the truth. lost: its change was thrown away; repeated: carried out again;
- * stale: its answer lacks what some client had been told before it began; short, over: a count with less than was
- * acknowledged before, or more than had been asked for; contradiction: sound by itself, and with it the answers so far
- * cannot all be right; unsure: its client gave up; late: carried out after that.
- */
-export type HitEffect = 'lost' | 'repeated' | 'stale' | 'short' | 'over' | 'contradiction' | 'unsure' | 'late'
-
-export interface Hit {
-  readonly effect: HitEffect
-  /** the fault, or the way of the store, that did it */
-  readonly cause: string
-  /** place of the fault in the scenario's list, from 1 */
-  readonly fault?: number
-  readonly more?: Readonly<Record<string, unknown>>
-}
+/** What befell an operation, for the truth to tell. */
+export type Hit = Pick<TruthHit, 'effect' | 'cause' | 'fault' | 'times' | 'provable' | 'carriedOut'>
 
 export type Outcome = 'acked' | 'refused' | 'unsure'
 
@@ -81,7 +68,7 @@ export class Output {
     ]
     const done = outcome === 'acked' && answer?.type === 'done' ? answer : undefined
     if (kind === 'read') {
-      if (done) fields.push(`"value":${key.kind === 'sailing' ? done.cell.count : done.cell.version.text}`)
+      if (done) fields.push(`"value":${heldValue(key, done.cell)}`)
     } else if (kind === 'increment') {
       fields.push(`"by":${by}`)
       if (done && this.#clocks.returnsCount) fields.push(`"value":${done.cell.count}`)
@@ -106,23 +93,22 @@ export class Output {
   }
 
   /** Something befell an operation at this time. */
-  hit(operation: Operation, { effect, cause, fault, more }: Hit, now: number): void {
+  hit(operation: Operation, hit: Hit, now: number): void {
+    const { effect, cause } = hit
     const name = `${effect} ${cause}`
     const counted = this.hits.get(name) ?? { effect, cause, count: 0 }
     counted.count++
     this.hits.set(name, counted)
     const text = (line: number): string => {
-      const place = JSON.stringify({
+      const truth: TruthHit = {
         line,
         client: clientName(operation.client),
         op: operation.kind,
         key: operation.key.name,
-        effect,
-        cause,
-        ...(fault === undefined ? {} : { fault }),
-        ...more,
-      })
-      return `${place.slice(0, -1)},"at":"${this.#clocks.text(now)}"}`
+        ...hit,
+        at: this.#clocks.text(now),
+      }
+      return JSON.stringify(truth)
     }
     if (operation.line > 0) this.#truthLine(text(operation.line))
     else operation.pending.push(text)
@@ -143,4 +129,9 @@ export class Output {
 /** Names a fault as a cause. */
 export function causedBy({ spec, number }: FaultRun): { cause: string; fault: number } {
   return { cause: spec.fault, fault: number }
+}
+
+/** What a read returns, as JSON. A counter that nobody has incremented is absent. */
+function heldValue(key: Key, { by, count, version }: Cell): string {
+  return key.kind === 'sailing' && by !== undefined ? String(count) : version.text
 }

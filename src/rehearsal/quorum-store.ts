@@ -20,11 +20,14 @@ export class QuorumStore implements Store {
   readonly #writeQuorum: number
   readonly #readQuorum: number
   readonly #spreads: boolean
+  readonly #deduplicates: boolean
+  /** of writes that may be sent again: then they keep their rank */
+  readonly #given = new WeakMap<Operation, number>()
   #ranks = 0
 
   constructor(
     { network, random, referee }: { network: Network; random: Random; referee: Referee },
-    { nodes, writeQuorum, readQuorum, spreads }: Scenario['store'],
+    { nodes, writeQuorum, readQuorum, spreads, deduplicates }: Scenario['store'],
     cells: readonly Cell[],
   ) {
     const majority = Math.floor(nodes / 2) + 1
@@ -35,6 +38,7 @@ export class QuorumStore implements Store {
     this.#writeQuorum = writeQuorum ?? majority
     this.#readQuorum = readQuorum ?? majority
     this.#spreads = spreads
+    this.#deduplicates = deduplicates
   }
 
   send(operation: Operation, reply: (answer: Answer) => void): void {
@@ -47,7 +51,9 @@ export class QuorumStore implements Store {
   /** Versions are ordered by when their writes began: a perfect clock gives them their ranks. */
   #write(operation: Operation, reply: (answer: Answer) => void): void {
     const { index } = operation.key
-    const rank = ++this.#ranks
+    const rank = (this.#deduplicates ? this.#given.get(operation) : undefined) ?? ++this.#ranks
+    this.#given.set(operation, rank)
+    let isCarriedOut = false
     const nodes = this.#random.choose(this.#writeQuorum, this.#cells.length)
     if (this.#spreads)
       for (let node = 0; node < this.#cells.length; node++) if (!nodes.includes(node)) nodes.push(node)
@@ -57,7 +63,9 @@ export class QuorumStore implements Store {
         const found = this.#cells[node][index]
         const cell = change(found, rank, operation)!
         if (rank > found.rank) this.#cells[node][index] = cell
-        if (operation.timesDone === 0) this.#referee.carriedOut(operation)
+        isCarriedOut ||= this.#deduplicates && operation.timesDone > 0
+        if (!isCarriedOut) this.#referee.carriedOut(operation)
+        isCarriedOut = true
         const answer: Answer = {
           type: 'done',
           node: nodeName(node),

@@ -50,7 +50,7 @@ export class Referee {
     operation.timesDone++
     if (operation.timesDone > 1) {
       this.#harm.set(operation.key, { cause: 'retry' })
-      this.#hit(operation, { effect: 'repeated', cause: 'retry', more: { times: operation.timesDone } })
+      this.#hit(operation, { effect: 'repeated', cause: 'retry', times: operation.timesDone })
     }
     if (!operation.isOpen && operation.timesDone === 1)
       this.#hit(operation, { effect: 'late', ...this.#hindrance(operation) })
@@ -77,7 +77,7 @@ export class Referee {
       this.#hit(operation, {
         effect: 'unsure',
         ...this.#hindrance(operation),
-        more: operation.kind === 'read' ? {} : { carriedOut: operation.timesDone > 0 },
+        ...(operation.kind === 'read' ? {} : { carriedOut: operation.timesDone > 0 }),
       })
       return
     }
@@ -85,15 +85,15 @@ export class Referee {
     const isProvable = this.#contradicts(operation, answer)
     const isBehind = this.#tells(operation) && answer.found.rank < operation.knownAtStart.rank
     const { key } = operation
-    const more = { provable: isProvable !== false }
-    if (isProvable === 'over') this.#hit(operation, { effect: 'over', ...this.#harmTo(key), more })
+    const provable = isProvable !== false
+    if (isProvable === 'over') this.#hit(operation, { effect: 'over', ...this.#harmTo(key), provable })
     else if (isBehind) {
       const cause = this.#whyStale(operation, answer.via)
       this.#harm.set(key, cause)
-      this.#hit(operation, { effect: 'stale', ...cause, more })
+      this.#hit(operation, { effect: 'stale', ...cause, provable })
     } else if (isProvable) {
       const effect = key.kind === 'sailing' ? 'short' : 'contradiction'
-      this.#hit(operation, { effect, ...this.#harmTo(key), more })
+      this.#hit(operation, { effect, ...this.#harmTo(key), provable })
     }
     const { rank, by } = answer.cell
     if (rank > key.known.rank) key.known = { rank, by }

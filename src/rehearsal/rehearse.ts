@@ -18,15 +18,8 @@ import { Referee } from './referee.js'
 import type { Scenario } from './scenario-schema.js'
 import { Scheduler } from './scheduler.js'
 import type { Store } from './store.js'
+import type { Account } from './truth-schema.js'
 import { Vessels } from './vessels.js'
-
-/** What a rehearsal came to. */
-export interface Account {
-  readonly operations: number
-  readonly outcomes: Readonly<Record<'acked' | 'refused' | 'unsure', number>>
-  /** what befell operations, by what it was and what did it, in that order */
-  readonly hits: readonly { readonly effect: string; readonly cause: string; readonly count: number }[]
-}
 
 /** Characters of a piece. */
 const PIECE = 1 << 16

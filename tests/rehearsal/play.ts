@@ -5,29 +5,17 @@ import type { Result } from '../../src/findings/result.js'
 import { readHistory } from '../../src/history/read.js'
 import { textSource } from '../../src/history/source.js'
 import { parsePromise } from '../../src/promises/parse-request.js'
-import { type Account, rehearse } from '../../src/rehearsal/rehearse.js'
+import { rehearse } from '../../src/rehearsal/rehearse.js'
 import { type Scenario, type ScenarioText, scenarioSchema } from '../../src/rehearsal/scenario-schema.js'
 import { SCENARIOS } from '../../src/rehearsal/scenarios.js'
-
-/** A line of the truth about an operation. */
-export interface TruthLine {
-  readonly line: number
-  readonly client: string
-  readonly op: string
-  readonly key: string
-  readonly effect: string
-  readonly cause: string
-  readonly fault?: number
-  readonly provable?: boolean
-  readonly carriedOut?: boolean
-}
+import type { Account, TruthHit } from '../../src/rehearsal/truth-schema.js'
 
 export interface Played {
   readonly history: string
   readonly truth: string
   readonly account: Account
   /** lines about operations */
-  readonly hits: readonly TruthLine[]
+  readonly hits: readonly TruthHit[]
 }
 
 export function scenario(text: Omit<ScenarioText, 'rehearsal'>): Scenario {
@@ -70,6 +58,6 @@ export async function checked(
 }
 
 /** What is wrong with an answer or a change, as opposed to one that nobody knows of. */
-export function isHarm({ effect }: TruthLine): boolean {
+export function isHarm({ effect }: TruthHit): boolean {
   return effect !== 'unsure' && effect !== 'late'
 }

@@ -4,6 +4,7 @@ import { describe, expect, it } from 'vitest'
 import { recordSchema } from '../../src/history/format.js'
 import { rehearse } from '../../src/rehearsal/rehearse.js'
 import { SCENARIOS } from '../../src/rehearsal/scenarios.js'
+import { truthSchema } from '../../src/rehearsal/truth-schema.js'
 import { checked, named, play, scenario } from './play.js'
 
 /** SHA-256 of history and truth of seed 1. A change of the simulation changes them; another machine does not. */
@@ -25,6 +26,8 @@ describe.each(SCENARIOS.map(({ name }) => name))('the rehearsal of %s', (name) =
       .map((line) => JSON.parse(line))
     for (const record of records)
       expect(recordSchema.safeParse(record).success, JSON.stringify(record)).toBe(true)
+    for (const line of truth.trimEnd().split('\n'))
+      expect(truthSchema.safeParse(JSON.parse(line)).success, line).toBe(true)
     const operations = records.filter(({ op }) => op !== undefined)
     expect(operations).toHaveLength(account.operations)
     const unsure = operations.filter(({ outcome }) => outcome === 'unsure').length

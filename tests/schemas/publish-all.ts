@@ -7,6 +7,7 @@ import { publish } from './publish.js'
 import { resultPublication } from './result-publication.js'
 import { scenarioPublication } from './scenario-publication.js'
 import { surveyPublication } from './survey-publication.js'
+import { truthPublication } from './truth-publication.js'
 
 for (const publication of [
   comparisonPublication,
@@ -16,5 +17,6 @@ for (const publication of [
   resultPublication,
   scenarioPublication,
   surveyPublication,
+  truthPublication,
 ])
   publish(publication)

@@ -7,6 +7,7 @@ import { published, schemaText } from './publish.js'
 import { resultPublication } from './result-publication.js'
 import { scenarioPublication } from './scenario-publication.js'
 import { surveyPublication } from './survey-publication.js'
+import { truthPublication } from './truth-publication.js'
 
 describe('the published JSON Schemas', () => {
   it.each([
@@ -17,6 +18,7 @@ describe('the published JSON Schemas', () => {
     resultPublication,
     scenarioPublication,
     surveyPublication,
+    truthPublication,
   ])('$file is what the code defines', (publication) => {
     expect(published(publication), 'run npm run schemas').toBe(schemaText(publication))
   })
