@@ -1,8 +1,6 @@
 /**
  * `misread check FILE...`: decide promises; findings; counterexamples.
  */
-import { createHash } from 'node:crypto'
-import { createReadStream } from 'node:fs'
 import { join } from 'node:path'
 import type { Budget } from '../deciders/search/budget.js'
 import { check } from '../findings/check.js'
@@ -19,6 +17,8 @@ import { compareText } from '../reports/compare-text.js'
 import { jsonReport } from '../reports/json.js'
 import { ndjsonReport } from '../reports/ndjson.js'
 import { textReport } from '../reports/text.js'
+import { CertificateFile } from './certificate-file.js'
+import { sha256Of } from './digests.js'
 import { type ExitStatus, UsageError } from './exit.js'
 import type { BudgetOption } from './options.js'
 import { Progress } from './progress.js'
@@ -34,6 +34,7 @@ export interface CheckOptions {
   budget?: BudgetOption
   format: 'text' | 'json' | 'ndjson'
   out?: string
+  certificate?: string
   force?: boolean
   everyKey?: boolean
   baseline?: string
@@ -65,6 +66,15 @@ export async function runCheck(
     if (keys !== '**')
       checkGlobs(history, [keys], () => (place ? `${place.file}:${place.line}` : '--promise'))
   }
+  const certificate =
+    options.certificate === undefined
+      ? undefined
+      : await CertificateFile.start(options.certificate, options.force ?? false, history, {
+          promises,
+          ...(options.clockError === undefined ? {} : { clockErrorNs: options.clockError }),
+          ...(options.keys ? { keys: options.keys } : {}),
+          newBudget: () => budgetOf(options.budget),
+        })
   const { result, counterexamples } = await check(history, final ? [...sources, final] : sources, {
     promises,
     ...(options.clockError === undefined ? {} : { clockErrorNs: options.clockError }),
@@ -75,7 +85,12 @@ export async function runCheck(
     onProgress: (done, all, searched) =>
       progress.show(searched === undefined ? 'deciding' : 'searching', done, all),
     signal: terminal.signal,
+    ...(certificate ? certificate.listeners : {}),
+  }).catch(async (error) => {
+    await certificate?.discard()
+    throw error
   })
+  await certificate?.commit()
   progress.clear()
   if (options.out !== undefined) {
     const complete = await withDigests(result)
@@ -172,13 +187,7 @@ export function totalSize(sources: readonly ByteSource[]): number | undefined {
 async function withDigests(result: Result): Promise<Result> {
   const inputs = []
   for (const input of result.inputs) {
-    if (input.file === '-') {
-      inputs.push(input)
-      continue
-    }
-    const hash = createHash('sha256')
-    for await (const chunk of createReadStream(input.file)) hash.update(chunk)
-    inputs.push({ ...input, sha256: hash.digest('hex') })
+    inputs.push(input.file === '-' ? input : { ...input, sha256: await sha256Of(input.file) })
   }
   return { ...result, inputs }
 }

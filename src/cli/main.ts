@@ -50,7 +50,11 @@ export function buildProgram(terminal: Terminal, end: (status: ExitStatus) => vo
       'text',
     )
     .option('--out <dir>', 'write result, report and counterexamples to a folder')
-    .option('--force', 'let --out write into a folder that is not empty')
+    .option(
+      '--certificate <file>',
+      'write the proof of every verdict, for misread verify (docs/certificates.md)',
+    )
+    .option('--force', 'let --out write into a folder that is not empty, and --certificate over a file')
     .option('--baseline <result>', 'end with 1 only for findings that this earlier result does not have')
     .option('--final <file>', 'a dump of the store taken after the run, as closing reads (docs/format.md)')
     .option('--every-key', 'list every key in the result, not only those broken or undecided')
@@ -73,6 +77,21 @@ export function buildProgram(terminal: Terminal, end: (status: ExitStatus) => vo
     .action(async (files: string[], options) => {
       const { runSurvey } = await import('./survey.js')
       end(await runSurvey(files, options, terminal))
+    })
+  program
+    .command('verify')
+    .description('check a certificate against the history that it is about, independently of the checks')
+    .argument('<certificate>', 'made by misread check --certificate')
+    .requiredOption('--history <file...>', 'the histories, as they were checked, in that order')
+    .option('--final <file>', 'the dump that the check was given')
+    .option('--format <format>', 'text or json', oneOf('text', 'json'), 'text')
+    .addHelpText(
+      'after',
+      '\nExample:\n  misread verify harbour.certificate.ndjson --history histories/harbour.ndjson\n',
+    )
+    .action(async (certificate: string, options) => {
+      const { runVerify } = await import('./verify.js')
+      end(await runVerify(certificate, options, terminal))
     })
   program
     .command('compare')

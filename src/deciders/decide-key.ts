@@ -61,7 +61,7 @@ export function* decideKeyInSteps(
   const counting = countPairs(key, rule)
   const kind = kindOfKey(key)
   if (kind === 'register') {
-    const verdict = decideByVersions(counting)
+    const { verdict } = decideByVersions(counting)
     if (verdict !== 'ambiguous') return told(verdict, counting)
   }
   if (kind === 'counter') {
@@ -79,16 +79,24 @@ function told(verdict: 'holds' | 'broken', counting: Counting): Decision {
  * What the versions of a register key say, as far as precedence tells which write each read saw. `ambiguous`: the
  * search has to say. O(n log n).
  */
-function decideByVersions(counting: Counting): 'holds' | 'broken' | 'ambiguous' {
+export function decideByVersions(counting: Counting): ByVersions {
   const { key } = counting
   const plain = verdictOf(counting)
   // Where the start is not known, absence may have been there before, whatever a delete writes later.
-  if (key.initial === NO_VALUE) return plain === 'holds' || !writesAbsence(key) ? plain : 'ambiguous'
-  if (plain !== 'ambiguous') return plain
+  if (key.initial === NO_VALUE)
+    return { verdict: plain === 'holds' || !writesAbsence(key) ? plain : 'ambiguous' }
+  if (plain !== 'ambiguous') return { verdict: plain }
   const { resolved, guessed } = resolveReads(counting)
   const known = verdictOf({ ...counting, resolved })
-  if (known !== 'ambiguous') return known
-  return verdictOf({ ...counting, resolved: guessed }) === 'holds' ? 'holds' : 'ambiguous'
+  if (known !== 'ambiguous') return { verdict: known, resolved }
+  const guess = verdictOf({ ...counting, resolved: guessed })
+  return guess === 'holds' ? { verdict: guess, resolved: guessed } : { verdict: 'ambiguous' }
+}
+
+export interface ByVersions {
+  readonly verdict: 'holds' | 'broken' | 'ambiguous'
+  /** what the ambiguous reads saw, where the verdict rests on it */
+  readonly resolved?: Int32Array
 }
 
 /**

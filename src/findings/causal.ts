@@ -7,12 +7,12 @@ import type { CausalOutcome, CausalPattern } from '../deciders/causal/decide.js'
 import { type CausalStep, causalPath } from '../deciders/causal/paths.js'
 import type { History } from '../history/columns.js'
 import { countPairs } from '../order/counting.js'
-import { gatherKey, type KeyIndex } from '../order/key-history.js'
-import { findVersions } from '../order/versions.js'
+import { gatherKey, type KeyHistory, type KeyIndex } from '../order/key-history.js'
+import { findVersions, type Versions } from '../order/versions.js'
 import { writtenValues } from '../promises/written-values.js'
 import type { Link, RawFinding } from './raw-finding.js'
 import { wrongReadFinding } from './register/wrong-reads.js'
-import { quoted } from './telling.js'
+import { quoted, Teller } from './telling.js'
 
 /** All findings of a broken outcome; at least one. */
 export function findCausal(
@@ -30,9 +30,31 @@ function wrongRead(history: History, index: KeyIndex, keyId: number, local: numb
   const counting = countPairs(gatherKey(history, index, keyId, 0n), writtenValues)
   const operations = index.operations.subarray(index.offset[keyId], index.offset[keyId + 1])
   const versions = findVersions(counting.key)
+  if (local === versions.impossibleCas)
+    return { ...impossibleCasFinding(counting.key, versions), margin: 'unbounded' }
   return {
     ...wrongReadFinding(counting, history.values, versions, operations, local, []),
     margin: 'unbounded',
+  }
+}
+
+/** A cas without an answer, seen to have taken effect on a value that was never there. */
+function impossibleCasFinding(key: KeyHistory, versions: Versions): RawFinding {
+  const tell = new Teller(key)
+  const p = versions.impossibleCas
+  const reader = versions.readOf.indexOf(versions.writeOf[p])
+  const exhibits = [{ operation: key.operation[p], role: 'the cas that could not have taken effect' }]
+  if (reader >= 0)
+    exhibits.push({ operation: key.operation[reader], role: 'a read that shows that it took effect' })
+  return {
+    kind: 'unwritten-value',
+    also: [],
+    keyId: key.keyId,
+    blamed: key.operation[p],
+    cause: -1,
+    exhibits,
+    links: [],
+    summary: `${tell.client(p)}'s cas on ${tell.keyName} took effect, for ${tell.value(key.value[p])} was seen, although nobody wrote the ${tell.value(key.extra[p])} that it expected.`,
   }
 }
 

@@ -40,6 +40,29 @@ export function closedSubsets(counting: Counting, values: Values): Dependents {
   }
 }
 
+/** These operations and all writes that must stay while they do. O(n · operations). */
+export function closedOver(counting: Counting, values: Values, operations: Iterable<number>): Set<number> {
+  const { key } = counting
+  const dependents = closedSubsets(counting, values)
+  const own = new Set(key.operation)
+  const kept = new Set([...operations].filter((i) => own.has(i)))
+  const isNeeded = (i: number): boolean => {
+    for (const _ of dependents(i, kept)) return true
+    return false
+  }
+  for (let again = true; again; ) {
+    again = false
+    for (let p = key.n - 1; p >= 0; p--) {
+      const i = key.operation[p]
+      if (kept.has(i) || !isWrite(key, p) || !isNeeded(i)) continue
+      kept.add(i)
+      // What a plain write found does not matter: only what finds something needs sources of its own.
+      if (isRead(key, p) || key.kind[p] === CAS || key.kind[p] === INCREMENT) again = true
+    }
+  }
+  return kept
+}
+
 /** Whether what was there mattered to the operation. */
 function finds({ key }: Counting, p: number, needsNumbers: boolean): boolean {
   return isRead(key, p) || key.kind[p] === CAS || (needsNumbers && key.kind[p] === INCREMENT)

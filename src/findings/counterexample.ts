@@ -14,7 +14,7 @@ import type { KeyHistory } from '../order/key-history.js'
 import { precedes } from '../order/precedence.js'
 import { isRead } from '../order/roles.js'
 import { findVersions } from '../order/versions.js'
-import { closedSubsets } from './closed-subsets.js'
+import { closedOver, closedSubsets } from './closed-subsets.js'
 import { Judge } from './judge.js'
 import type { RawFinding } from './raw-finding.js'
 import { type Dependents, shrink } from './shrink.js'
@@ -33,14 +33,39 @@ export function findCounterexample(
   finding: RawFinding,
 ): Counterexample | undefined {
   const judge = new Judge(counting, values)
-  if (isSearched(counting)) return closedCounterexample(judge, finding)
+  if (isSearched(counting)) {
+    const operations = findClosedConflict(counting, values, finding)
+    return operations && { operations, initialCount: undefined }
+  }
   if (counting.key.hasIncrements) return counterCounterexample(judge, finding)
   const dependents = registerDependents(counting, finding)
-  const evidence = finding.exhibits.map(({ operation }) => operation)
-  const start = judge.isBroken(evidence) ? evidence : everything(counting.key)
+  // A cas that is shown for what it wrote found something, too.
+  const shown = finding.exhibits.map(({ operation }) => operation)
+  const evidence = new Set([...shown, ...closedOver(counting, values, shown)])
+  const start = judge.isBroken(evidence) ? [...evidence] : everything(counting.key)
   if (!judge.isBroken(start)) return undefined
   return { operations: shrink(start, (rest) => judge.isBroken(rest), dependents), initialCount: undefined }
 }
+
+/**
+ * Operations that are broken by themselves, irreducibly, with all that may explain their reads among them: what is left
+ * out cannot matter. Undefined where no such set was confirmed. For keys of all kinds; a counter's may be large.
+ */
+export function findClosedConflict(
+  counting: Counting,
+  values: Values,
+  finding: RawFinding,
+): readonly number[] | undefined {
+  const judge = new Judge(counting, values)
+  const shown = finding.exhibits.map(({ operation }) => operation)
+  const evidence = closedOver(counting, values, shown)
+  const start = judge.isBroken(evidence) ? [...evidence] : everything(counting.key)
+  if (start.length > MOST_SHRUNK || !judge.isBroken(start)) return undefined
+  return shrink(start, (rest) => judge.isBroken(rest), closedSubsets(counting, values))
+}
+
+/** Larger sets than this are not worth what shrinking them costs. */
+const MOST_SHRUNK = 1000
 
 /** Whether the key's reads do not all say what they saw, so that the evidence alone may not be enough. */
 function isSearched(counting: Counting): boolean {
@@ -48,21 +73,6 @@ function isSearched(counting: Counting): boolean {
     kindOfKey(counting.key) === 'mixed' ||
     (!counting.key.hasIncrements && findVersions(counting.key).ambiguous >= 0)
   )
-}
-
-/** From the evidence, with whatever may explain its reads, or from the whole key. */
-function closedCounterexample(judge: Judge, finding: RawFinding): Counterexample | undefined {
-  const dependents = closedSubsets(judge.counting, judge.values)
-  const isClosed = (operations: ReadonlySet<number>): boolean =>
-    judge.key.operation.every((i) => {
-      if (operations.has(i)) return true
-      for (const _ of dependents(i, operations)) return false
-      return true
-    })
-  const evidence = new Set(finding.exhibits.map(({ operation }) => operation))
-  const start = isClosed(evidence) && judge.isBroken(evidence) ? [...evidence] : everything(judge.key)
-  if (!judge.isBroken(start)) return undefined
-  return { operations: shrink(start, (rest) => judge.isBroken(rest), dependents), initialCount: undefined }
 }
 
 function counterCounterexample(judge: Judge, finding: RawFinding): Counterexample | undefined {

@@ -4,7 +4,7 @@
 import { decideKey } from '../deciders/decide-key.js'
 import { SMALL_BUDGET } from '../deciders/search/budget.js'
 import { INCREMENT, type Values } from '../history/columns.js'
-import { type Counting, counts } from '../order/counting.js'
+import { type Counting, countPairs, counts } from '../order/counting.js'
 import { gatherOperations, type KeyHistory } from '../order/key-history.js'
 import { WithExtraValue } from './with-extra-value.js'
 
@@ -53,6 +53,13 @@ export class Judge {
   }
 
   #isBrokenKey(key: KeyHistory): boolean {
+    // Which reads are closing ones, the whole key says.
+    const { closing } = this.counting
+    if (closing) {
+      const own = countPairs(key, this.counting.rule).closing!
+      for (let p = 0; p < key.n; p++)
+        if (own[p] === 1 && closing[this.localOf(key.operation[p])] === 0) return false
+    }
     return decideKey(key, this.values, this.counting.rule, SMALL_BUDGET).verdict === 'broken'
   }
 

@@ -25,6 +25,13 @@ import { summarizeHistory } from './summary.js'
 import { duration } from './telling.js'
 import { upheld } from './upholds.js'
 
+/** What was decided about one key under one promise, and what was found where it is broken. */
+export interface DecidedPromise {
+  readonly promise: KeyPromiseRequest
+  readonly decision: Decision
+  readonly found: readonly RawFinding[]
+}
+
 export interface CheckRequest {
   readonly promises: readonly PromiseRequest[]
   /** replaces what the headers say, in nanoseconds */
@@ -37,6 +44,10 @@ export interface CheckRequest {
   readonly counterexamples?: number
   /** makes the budget of one key's searches; default: some seconds' worth of steps, the same on every machine */
   newBudget?(): Budget
+  /** told of each key when all that is asked of it is decided */
+  onKey?(key: KeyHistory, decided: readonly DecidedPromise[]): Promise<void>
+  /** told of each promise over all keys */
+  onCausal?(promise: CausalPromiseRequest, index: KeyIndex, found: readonly RawFinding[]): Promise<void>
   /** told now and then how many of the keys are decided, and which one is being searched */
   onProgress?(done: number, total: number, searched?: string): void
   /** stops the check: what is not decided by then is undecided, and the result says so */
@@ -45,6 +56,11 @@ export interface CheckRequest {
 
 /** How long to decide before other things may happen, in operations. */
 const BREATHE = 200_000
+
+interface DecidedKey {
+  readonly key: KeyHistory
+  readonly decided: readonly DecidedPromise[]
+}
 
 interface Tally {
   holds: number
@@ -93,22 +109,27 @@ export class Run {
       if (asked.length === 0) continue
       if (signal?.aborted) this.#interrupted = true
       const steps = this.#decide(keyId, name, asked)
-      for (let next = steps.next(); !next.done; next = steps.next()) {
+      let next = steps.next()
+      for (; !next.done; next = steps.next()) {
         onProgress?.(keyId, total, name)
         await breathe()
         if (signal?.aborted) this.#interrupted = true
       }
+      if (this.#request.onKey) await this.#request.onKey(next.value.key, next.value.decided)
       since += offset[keyId + 1] - offset[keyId]
       if (since < BREATHE) continue
       since = 0
       onProgress?.(keyId + 1, total)
       await breathe()
     }
-    for (const promise of promises) if (promise.causal) this.#decideCausal(promise, isWanted)
+    for (const promise of promises) if (promise.causal) await this.#decideCausal(promise, isWanted)
   }
 
   /** One verdict over all the keys that are in. */
-  #decideCausal(promise: CausalPromiseRequest, isWanted: ((name: string) => boolean)[] | undefined): void {
+  async #decideCausal(
+    promise: CausalPromiseRequest,
+    isWanted: ((name: string) => boolean)[] | undefined,
+  ): Promise<void> {
     const { name, causal, keys } = promise
     const matches = keyGlob(keys)
     const outcome = this.#interrupted
@@ -127,20 +148,23 @@ export class Run {
       verdict: outcome?.verdict ?? 'undecided',
       leftOut: outcome?.causal.keysLeftOut ?? 0,
     })
-    if (outcome?.verdict !== 'broken') return
-    for (const finding of findCausal(this.#history, this.#index, outcome))
-      this.findings.push({ promise: name, finding })
+    const found = outcome?.verdict === 'broken' ? findCausal(this.#history, this.#index, outcome) : []
+    for (const finding of found) this.findings.push({ promise: name, finding })
+    if (outcome) await this.#request.onCausal?.(promise, this.#index, found)
   }
 
   /** Decides one key under all that is asked of it; yields while it searches. */
-  *#decide(keyId: number, name: string, asked: readonly KeyPromiseRequest[]): Generator<void, void> {
+  *#decide(keyId: number, name: string, asked: readonly KeyPromiseRequest[]): Generator<void, DecidedKey> {
     const purse = new Purse(this.#request.newBudget?.() ?? DEFAULT_BUDGET)
     const key = gatherKey(this.#history, this.#index, keyId, this.#clockErrorNs)
     const verdicts: KeyResult['verdicts'] = {}
     const untested: string[] = []
     const margins: Record<string, string> = {}
+    const decided: DecidedPromise[] = []
     for (const promise of asked) {
       const decision = yield* this.#decidePromise(key, promise, purse)
+      const found = decision.verdict === 'broken' ? this.#find(key, promise) : []
+      decided.push({ promise, decision, found })
       const tally = this.#tallies.get(promise.name)!
       if (decision.verdict === 'left-out') {
         tally.leftOut++
@@ -157,7 +181,6 @@ export class Run {
         this.#undecided.push({ key: name, promise: promise.name, reason, ...(progress ? { progress } : {}) })
       }
       if (decision.verdict === 'broken') {
-        const found = this.#find(key, promise)
         const margin = this.#margin(key, promise, found)
         margins[promise.name] = margin.toString()
         for (const finding of found) {
@@ -181,6 +204,7 @@ export class Run {
           : {}),
       })
     }
+    return { key, decided }
   }
 
   *#decidePromise(key: KeyHistory, { rule }: KeyPromiseRequest, purse: Purse): Generator<void, Decision> {

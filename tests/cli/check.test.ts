@@ -325,3 +325,22 @@ describe('help', () => {
     },
   )
 })
+
+describe('certificates', () => {
+  it('of a check are accepted, and refused once anything differs', async () => {
+    const path = join(folder, 'harbour.certificate.ndjson')
+    expect((await misread(['check', HARBOUR, '--certificate', path])).status).toBe(1)
+    const accepted = await misread(['verify', path, '--history', HARBOUR])
+    expect([accepted.status, accepted.err]).toEqual([0, ''])
+    expect(accepted.out).toMatch(
+      /^accepted\nProved: \d+ claims that a promise holds, \d+ claims that one is broken\.\n$/,
+    )
+    const other = await misread(['verify', path, '--history', file('other.ndjson', SOUND)])
+    expect(other.status).toBe(1)
+    expect(other.out).toContain('line 1: speaks of other input')
+    expect((await misread(['check', HARBOUR, '--certificate', path])).err).toContain('stands already')
+    expect((await misread(['check', '-', '--certificate', `${path}2`], { input: SOUND })).err).toContain(
+      'give the history as one',
+    )
+  })
+})

@@ -1,4 +1,5 @@
 /** Run by `npm run schemas`. */
+import { certificatePublication } from './certificate-publication.js'
 import { comparisonPublication } from './comparison-publication.js'
 import { dumpPublication } from './dump-publication.js'
 import { historyPublication } from './history-publication.js'
@@ -10,6 +11,7 @@ import { surveyPublication } from './survey-publication.js'
 import { truthPublication } from './truth-publication.js'
 
 for (const publication of [
+  certificatePublication,
   comparisonPublication,
   dumpPublication,
   historyPublication,

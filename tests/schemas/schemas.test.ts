@@ -1,4 +1,5 @@
 import { describe, expect, it } from 'vitest'
+import { certificatePublication } from './certificate-publication.js'
 import { comparisonPublication } from './comparison-publication.js'
 import { dumpPublication } from './dump-publication.js'
 import { historyPublication } from './history-publication.js'
@@ -11,6 +12,7 @@ import { truthPublication } from './truth-publication.js'
 
 describe('the published JSON Schemas', () => {
   it.each([
+    certificatePublication,
     comparisonPublication,
     dumpPublication,
     historyPublication,

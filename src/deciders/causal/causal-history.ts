@@ -34,6 +34,8 @@ export interface CausalHistory {
   /** reads of values that nobody wrote, or only refused writes, as operation indices with their key's local index */
   readonly wrongReads: readonly { keyId: number; local: number }[]
   readonly keysIn: number
+  /** ids of the keys that are in */
+  readonly keyIds: readonly number[]
   readonly keysLeftOut: number
 }
 
@@ -48,6 +50,7 @@ export function collectCausal(
   const readsFrom = new Map<number, number>()
   const wrongReads: { keyId: number; local: number }[] = []
   let keysIn = 0
+  const keyIds: number[] = []
   let keysLeftOut = 0
   for (let keyId = 0; keyId + 1 < index.offset.length; keyId++) {
     if (index.offset[keyId] === index.offset[keyId + 1] || !isWanted(keyId)) continue
@@ -58,6 +61,9 @@ export function collectCausal(
       continue
     }
     keysIn++
+    keyIds.push(keyId)
+    // An unsure cas that was seen took effect, so it found what it expected.
+    if (versions.impossibleCas >= 0) wrongReads.push({ keyId, local: versions.impossibleCas })
     for (let p = 0; p < key.n; p++) {
       const seen = versions.readOf[p]
       const written = versions.writeOf[p]
@@ -114,6 +120,7 @@ export function collectCausal(
     place,
     wrongReads,
     keysIn,
+    keyIds,
     keysLeftOut,
   }
 }

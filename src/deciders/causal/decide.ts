@@ -34,6 +34,10 @@ export interface CausalOutcome {
   readonly patterns: readonly CausalPattern[]
   /** no read was put to the test: none has a write of its key in its past */
   readonly untested: boolean
+  /** nodes in an order that extends causality, as far as there is one */
+  readonly order: Int32Array
+  /** under causal-convergence: writes of one key that a read of the latter puts in order, as nodes */
+  readonly conflicts: readonly { readonly before: number; readonly after: number }[]
 }
 
 /** Decides over the keys that are wanted and in. O(n · components · log n). */
@@ -44,7 +48,15 @@ export function decideCausal(
   isWanted: (keyId: number) => boolean,
 ): CausalOutcome {
   const causal = collectCausal(history, index, isWanted)
-  if (causal.keysIn === 0) return { verdict: 'undecided', causal, patterns: [], untested: true }
+  if (causal.keysIn === 0)
+    return {
+      verdict: 'undecided',
+      causal,
+      patterns: [],
+      untested: true,
+      order: new Int32Array(),
+      conflicts: [],
+    }
   const causality = causalityOf(causal, history.clients.size)
   const patterns: CausalPattern[] = []
   if (causality.stuck.length > 0)
@@ -80,7 +92,14 @@ export function decideCausal(
     if (cycle) patterns.push({ name: 'CyclicCF', cycle })
   }
   const isBroken = patterns.length > 0 || causal.wrongReads.length > 0
-  return { verdict: isBroken ? 'broken' : 'holds', causal, patterns, untested: untested && !isBroken }
+  return {
+    verdict: isBroken ? 'broken' : 'holds',
+    causal,
+    patterns,
+    untested: untested && !isBroken,
+    order: causality.order,
+    conflicts,
+  }
 }
 
 /**
