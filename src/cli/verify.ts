@@ -33,7 +33,7 @@ export async function runVerify(
     inputs.push({ sha256: await sha256Of(file) })
   const verifier = new Verifier(history, inputs)
   const lines = createInterface({
-    input: Readable.from((await fileSource(certificate)).chunks()),
+    input: Readable.from(copied((await fileSource(certificate)).chunks())),
     crlfDelay: Number.POSITIVE_INFINITY,
   })
   for await (const line of lines) verifier.take(line)
@@ -46,4 +46,9 @@ export async function runVerify(
       : verifyText(verification, terminal),
   )
   return isAccepted ? 0 : 1
+}
+
+/** A stream reads ahead, and a chunk of a source is good only until the next is asked for. */
+async function* copied(chunks: AsyncIterable<Uint8Array>): AsyncGenerator<Uint8Array> {
+  for await (const chunk of chunks) yield Buffer.from(chunk)
 }

@@ -343,4 +343,16 @@ describe('certificates', () => {
       'give the history as one',
     )
   })
+
+  it('of more than a chunk are read whole', async () => {
+    const gates = Array.from({ length: 3000 }, (_, i) => `gate-${i}-${'x'.repeat(1000)}`)
+    const history = gates.map((key, i) =>
+      JSON.stringify({ client: 'a', op: 'write', key, value: i, start: 10 * i, end: 10 * i + 5 }),
+    )
+    const input = file('gates.ndjson', `${history.join('\n')}\n`)
+    const path = join(folder, 'gates.certificate.ndjson')
+    expect((await misread(['check', input, '--certificate', path])).status).toBe(0)
+    const { status, out } = await misread(['verify', path, '--history', input])
+    expect([status, out]).toEqual([0, expect.stringContaining('Proved: 3,000 claims that a promise holds')])
+  })
 })
