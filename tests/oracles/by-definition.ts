@@ -29,6 +29,21 @@ export function witnessByDefinition(key: PlainKey, rule: PlainRule): PlainOperat
   return undefined
 }
 
+/** Whether this sequence of operations, by their places in the key, shows the promise kept. */
+export function isWitnessByDefinition(key: PlainKey, rule: PlainRule, sequence: readonly number[]): boolean {
+  const { all, kind } = readKey(key)
+  const placed = sequence.map((at) => all[at])
+  const isUsable = (op: Operation | undefined): boolean =>
+    op !== undefined && (op.acked || (op.outcome === 'unsure' && op.op !== 'read'))
+  if (!placed.every(isUsable) || new Set(placed).size < placed.length) return false
+  if (all.some((op) => op.acked && !placed.includes(op))) return false
+  const counted = countedPairs(key, rule, kind, all)
+  if (placed.some((b, at) => placed.slice(at + 1).some((a) => countsAtAll(counted, a, b)))) return false
+  return possibleStarts(key, kind, all).some((initial) =>
+    placed.every((op, at) => answersAsRecorded(op, placed.slice(0, at), initial, key, rule, kind, all)),
+  )
+}
+
 function subsets<T>(items: readonly T[]): T[][] {
   if (items.length === 0) return [[]]
   const without = subsets(items.slice(1))

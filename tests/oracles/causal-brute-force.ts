@@ -11,11 +11,12 @@ export interface CausalOp {
   readonly unsure?: boolean
 }
 
-/** Operations in session order per client; reads of null are of the initial value. */
-export function bruteForceCausal(ops: readonly CausalOp[]): { causal: boolean; convergence: boolean } {
-  const readOf = (op: CausalOp): unknown =>
-    op.op === 'read' ? op.value : op.op === 'cas' ? op.expect : undefined
-  const isWrite = (op: CausalOp): boolean => op.op !== 'read'
+const readOf = (op: CausalOp): unknown =>
+  op.op === 'read' ? op.value : op.op === 'cas' ? op.expect : undefined
+const isWrite = (op: CausalOp): boolean => op.op !== 'read'
+
+/** The operations that took effect, and causality between them, closed. */
+function causality(ops: readonly CausalOp[]): { nodes: CausalOp[]; co: boolean[][] } {
   const writerOf = (key: string, value: unknown): CausalOp | undefined =>
     ops.find((op) => isWrite(op) && op.key === key && op.value === value)
   // Unsure writes count when somebody read them (through the cas that they are as well).
@@ -45,6 +46,35 @@ export function bruteForceCausal(ops: readonly CausalOp[]): { causal: boolean; c
   )
   for (let k = 0; k < n; k++)
     for (let i = 0; i < n; i++) for (let j = 0; j < n; j++) if (co[i][k] && co[k][j]) co[i][j] = true
+  return { nodes, co }
+}
+
+/** Whether read r returned the last write of its key in its causal past, writes taken in this order. */
+function explains(nodes: readonly CausalOp[], co: boolean[][], order: readonly number[], r: number): boolean {
+  const last = order.filter((w) => co[w][r] && isWrite(nodes[w]) && nodes[w].key === nodes[r].key).at(-1)
+  return (last === undefined ? null : nodes[last].value) === readOf(nodes[r])
+}
+
+/** Whether the order, places in `ops`, is one of all that took effect, extends causality, and explains every read. */
+export function isArbitration(ops: readonly CausalOp[], order: readonly number[]): boolean {
+  if (!extendsCausality(ops, order)) return false
+  const { nodes, co } = causality(ops)
+  const sequence = order.map((at) => nodes.indexOf(ops[at]))
+  return sequence.every((r) => readOf(nodes[r]) === undefined || explains(nodes, co, sequence, r))
+}
+
+/** Whether the order, places in `ops`, is one of all that took effect and extends causality. */
+export function extendsCausality(ops: readonly CausalOp[], order: readonly number[]): boolean {
+  const { nodes, co } = causality(ops)
+  const sequence = order.map((at) => nodes.indexOf(ops[at]))
+  if (sequence.includes(-1) || new Set(sequence).size !== nodes.length || order.length !== nodes.length)
+    return false
+  return !sequence.some((b, at) => sequence.slice(at).some((a) => co[a][b]))
+}
+
+/** Operations in session order per client; reads of null are of the initial value. */
+export function bruteForceCausal(ops: readonly CausalOp[]): { causal: boolean; convergence: boolean } {
+  const { nodes, co } = causality(ops)
   if (nodes.some((_, i) => co[i][i])) return { causal: false, convergence: false }
   const reads = nodes.map((_, i) => i).filter((i) => readOf(nodes[i]) !== undefined)
   for (const r of reads) {
@@ -54,10 +84,6 @@ export function bruteForceCausal(ops: readonly CausalOp[]): { causal: boolean; c
     }
   }
   const writes = nodes.map((_, i) => i).filter((i) => isWrite(nodes[i]))
-  const explains = (order: number[], r: number): boolean => {
-    const last = order.filter((w) => co[w][r] && nodes[w].key === nodes[r].key).at(-1)
-    return (last === undefined ? null : nodes[last].value) === readOf(nodes[r])
-  }
   /** Some order of these writes that extends causality and passes the test. */
   const someOrder = (left: number[], order: number[], test: (order: number[]) => boolean): boolean => {
     if (left.length === 0) return test(order)
@@ -74,9 +100,10 @@ export function bruteForceCausal(ops: readonly CausalOp[]): { causal: boolean; c
     someOrder(
       writes.filter((w) => co[w][r]),
       [],
-      (order) => explains(order, r),
+      (order) => explains(nodes, co, order, r),
     ),
   )
-  const convergence = causal && someOrder(writes, [], (order) => reads.every((r) => explains(order, r)))
+  const convergence =
+    causal && someOrder(writes, [], (order) => reads.every((r) => explains(nodes, co, order, r)))
   return { causal, convergence }
 }

@@ -1,6 +1,7 @@
 import fc from 'fast-check'
 import { describe, expect, it } from 'vitest'
 import { noLostUpdates } from '../../src/promises/no-lost-updates.js'
+import { judgeOf } from '../certificates/judging.js'
 import { keyText } from './arbitraries.js'
 import type { PlainKey, PlainOperation } from './brute-force.js'
 import { decide, runs } from './decide.js'
@@ -69,7 +70,7 @@ function someUpdateIsLost({ operations, initial, initialUnknown }: PlainKey): bo
 }
 
 describe('no-lost-updates', () => {
-  it('agrees with giving every update a version of its own', async () => {
+  it('agrees with giving every update a version of its own, and so does the verifier', async () => {
     const tally = { holds: 0, broken: 0 }
     await fc.assert(
       fc.asyncProperty(
@@ -93,6 +94,7 @@ describe('no-lost-updates', () => {
           tally[expected]++
           const { verdict } = await decide(key, noLostUpdates)
           expect(verdict, keyText(key)).toBe(expected)
+          expect((await judgeOf(key)).losesUpdates(), keyText(key)).toBe(expected === 'broken')
         },
       ),
       { numRuns: runs(2000) },
