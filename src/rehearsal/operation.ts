@@ -36,6 +36,9 @@ export interface Cell {
 
 export type Effect = Pick<Cell, 'rank' | 'by'>
 
+/** What a change found, without who had made it: a chain of those would keep all of the past in memory. */
+export type Found = Omit<Cell, 'by'>
+
 /** One writing of a register, whatever the value. */
 export interface Version {
   /** the value as JSON; `null` is absence */
@@ -64,8 +67,8 @@ export class Operation {
   readonly by: number
   /** true time */
   readonly start: number
-  /** what clients had been told of the key when it began */
-  readonly knownAtStart: Effect
+  /** what clients had been told of the key when it began; forgotten once it has ended */
+  knownAtStart: Effect
   /** until an answer came or the client gave up */
   isOpen = true
   /** how many times the store carried it out */
@@ -101,6 +104,12 @@ export class Operation {
     this.by = request.by ?? 1
     this.knownAtStart = request.key.known
   }
+
+  /** Forgets what is needed only until it ends, lest every operation keep the one before it in memory. */
+  close(): void {
+    this.isOpen = false
+    this.knownAtStart = { rank: 0, by: undefined }
+  }
 }
 
 /** Which part of the store answered. */
@@ -118,7 +127,7 @@ export type Answer =
       /** what a read found; what a change left behind */
       readonly cell: Cell
       /** what a change found */
-      readonly found: Cell
+      readonly found: Found
       /** cas: whether the value was the expected one */
       readonly applied: boolean
     }

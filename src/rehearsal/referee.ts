@@ -71,7 +71,11 @@ export class Referee {
 
   /** An operation ends for its client. Call before its line is written. */
   ended(operation: Operation, outcome: Outcome, answer: Done | undefined): void {
-    operation.isOpen = false
+    this.#judge(operation, outcome, answer)
+    operation.close()
+  }
+
+  #judge(operation: Operation, outcome: Outcome, answer: Done | undefined): void {
     if (outcome !== 'acked') this.#tallies.get(operation.key)?.gaveUp(operation)
     if (outcome === 'unsure') {
       this.#hit(operation, {

@@ -3,7 +3,7 @@
  */
 
 import type { FaultRun } from './fault-run.js'
-import type { Answer, Cell, Key, Operation, Via } from './operation.js'
+import type { Answer, Cell, Found, Key, Operation, Via } from './operation.js'
 import type { Region } from './region.js'
 
 /** A change in the log of a region. */
@@ -27,7 +27,7 @@ export interface Entry {
 }
 
 export interface Result {
-  readonly found: Cell
+  readonly found: Found
   readonly cell: Cell
   readonly applied: boolean
 }
@@ -56,7 +56,12 @@ export class Replica {
     const cell = change(found, rank, operation)
     this.cells[key.index] = cell ?? found
     this.done = rank
-    return { found, cell: cell ?? found, applied: cell !== undefined }
+    const { version, count } = found
+    return {
+      found: { rank: found.rank, version, count },
+      cell: cell ?? found,
+      applied: cell !== undefined,
+    }
   }
 
   /** Takes the log and state of another over. */

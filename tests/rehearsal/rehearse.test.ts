@@ -1,3 +1,4 @@
+import { spawnSync } from 'node:child_process'
 import { createHash } from 'node:crypto'
 import { readFileSync } from 'node:fs'
 import { describe, expect, it } from 'vitest'
@@ -73,6 +74,26 @@ describe('a rehearsal', () => {
     }
     expect(pieces).toBeGreaterThan(100)
     expect(largest).toBeLessThan(70_000)
+  })
+
+  it('keeps nothing of the past: half a million operations in little memory', () => {
+    const script = `
+      import { rehearse } from './src/rehearsal/rehearse.ts'
+      import { scenarioSchema } from './src/rehearsal/scenario-schema.ts'
+      const scenario = scenarioSchema.parse({
+        rehearsal: 1,
+        store: { replication: 'async' },
+        workload: { lasts: '600s', clients: 10, leases: 2, retries: {} },
+        faults: [{ fault: 'failover', at: '5s', every: '10s' }],
+      })
+      const run = rehearse(scenario, 1)
+      let step = run.next()
+      while (!step.done) step = run.next()
+      console.log(step.value.operations)`
+    const args = ['--max-old-space-size=80', '--import', 'tsx', '--input-type=module', '--eval', script]
+    const { stdout, stderr } = spawnSync(process.execPath, args, { encoding: 'utf8' })
+    expect(stderr).toBe('')
+    expect(Number(stdout)).toBeGreaterThan(300_000)
   })
 
   it('ends with every key read by several clients', () => {
