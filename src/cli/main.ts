@@ -126,6 +126,7 @@ export function buildProgram(terminal: Terminal, end: (status: ExitStatus) => vo
     .option('--seed <n>', 'chance: the same seed makes the same history', countOption, 1)
     .option('--lasts <duration>', 'how long clients go on, whatever the scenario says (10m)', durationOption)
     .option('--out <dir>', 'folder for history.ndjson, truth.ndjson and scenario.yaml')
+    .option('--gzip', 'pack the history: history.ndjson.gz')
     .option('--force', 'let --out write over what an earlier rehearsal left there')
     .option('--list', 'list the scenarios that are known by name')
     .option('--print', 'print the scenario, to start a file of your own from')

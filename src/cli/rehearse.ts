@@ -22,6 +22,7 @@ export interface RehearseOptions {
   seed: number
   lasts?: bigint
   out?: string
+  gzip?: boolean
   force?: boolean
   list?: boolean
   print?: boolean
@@ -57,7 +58,7 @@ async function play(
   scenario: Scenario,
   text: string,
   name: string,
-  { out, seed, force = false, lasts }: RehearseOptions & { out: string },
+  { out, seed, gzip = false, force = false, lasts }: RehearseOptions & { out: string },
   terminal: Terminal,
 ): Promise<ExitStatus> {
   const progress = new Progress(terminal)
@@ -69,7 +70,8 @@ async function play(
   }
   try {
     await makeFolder(out)
-    const history = await start('history.ndjson')
+    const file = gzip ? 'history.ndjson.gz' : 'history.ndjson'
+    const history = await start(file)
     const truth = await start('truth.ndjson')
     const copy = await start('scenario.yaml')
     const run = rehearse(scenario, seed, (time, end) => progress.show('rehearsing', Math.min(time, end), end))
@@ -85,7 +87,7 @@ async function play(
     await copy.write(`# played with seed ${seed}${further}\n${text}`)
     for (const output of outputs) await output.commit()
     progress.clear()
-    await write(terminal.out, summary(scenario.title, step.value, seed, out))
+    await write(terminal.out, summary(scenario.title, step.value, seed, out, file))
     return 0
   } catch (error) {
     progress.clear()
@@ -134,7 +136,13 @@ function listed(): string {
   return SCENARIOS.map(({ name, about }) => `${name.padEnd(width)}  ${about}\n`).join('')
 }
 
-function summary(title: string, { operations, outcomes, hits }: Account, seed: number, out: string): string {
+function summary(
+  title: string,
+  { operations, outcomes, hits }: Account,
+  seed: number,
+  out: string,
+  file: string,
+): string {
   const number = (n: number): string => n.toLocaleString('en-US')
   const lines = [
     `${title}, seed ${seed}`,
@@ -150,8 +158,13 @@ function summary(title: string, { operations, outcomes, hits }: Account, seed: n
   }
   lines.push(
     '',
-    `Written to ${out}: history.ndjson, truth.ndjson, scenario.yaml`,
-    `Next: misread check ${join(out, 'history.ndjson')}`,
+    `Written to ${out}: ${file}, truth.ndjson, scenario.yaml`,
+    `Next: misread check ${quoted(join(out, file))}`,
   )
   return `${lines.join('\n')}\n`
+}
+
+/** A path as a shell takes it. */
+function quoted(path: string): string {
+  return /^[\w./\\:@+-]+$/.test(path) ? path : `'${path.replaceAll("'", "'\\''")}'`
 }

@@ -12,13 +12,11 @@ export class Clocks {
   /** ns at the start, and ns a second, by host */
   readonly offsets: readonly number[]
   readonly drifts: readonly number[]
-  readonly returnsCount: boolean
 
   constructor({ clocks, workload }: Scenario, random: Random) {
     const hosts = Math.min(workload.hosts, workload.clients)
     this.offsets = Array.from({ length: hosts }, () => random.around(clocks.off))
     this.drifts = Array.from({ length: hosts }, () => random.around(clocks.drift))
-    this.returnsCount = workload.returnsCount
   }
 
   hostOf(client: number): number {

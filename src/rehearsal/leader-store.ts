@@ -54,7 +54,7 @@ export class LeaderStore implements Store {
     network.toNode(operation, node, () =>
       region.receive(node, operation, (answer) => {
         if (answer.type === 'refused') region.believed[client] = region.leader
-        network.toClient(operation, node, answer, reply)
+        network.toClient(operation, node, () => reply(answer))
       }),
     )
   }

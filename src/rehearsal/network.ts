@@ -2,7 +2,7 @@
  * Messages between clients and nodes: how long they take, and which never arrive.
  */
 import type { FaultRun } from './fault-run.js'
-import type { Answer, Operation } from './operation.js'
+import type { Operation } from './operation.js'
 import type { Random } from './random.js'
 import type { Scheduler } from './scheduler.js'
 
@@ -63,8 +63,8 @@ export class Network {
   }
 
   /** An answer on its way to a client. */
-  toClient(operation: Operation, node: number, answer: Answer, deliver: (answer: Answer) => void): void {
-    this.#carry(operation, node, 'answers', () => deliver(answer))
+  toClient(operation: Operation, node: number, deliver: () => void): void {
+    this.#carry(operation, node, 'answers', deliver)
   }
 
   /** A message to the cache or from it. */

@@ -22,6 +22,7 @@ export type Outcome = 'acked' | 'refused' | 'unsure'
 
 export class Output {
   readonly #clocks: Clocks
+  readonly #returnsCount: boolean
   #history: string[] = []
   #truth: string[] = []
   /** lines of the history so far */
@@ -31,8 +32,10 @@ export class Output {
   /** operations hit, by effect and cause */
   readonly hits = new Map<string, { effect: HitEffect; cause: string; count: number }>()
 
-  constructor(clocks: Clocks) {
+  /** `returnsCount`: whether increments answer the count after them */
+  constructor(clocks: Clocks, returnsCount: boolean) {
     this.#clocks = clocks
+    this.#returnsCount = returnsCount
   }
 
   /** Characters that wait to be taken. */
@@ -71,7 +74,7 @@ export class Output {
       if (done) fields.push(`"value":${heldValue(key, done.cell)}`)
     } else if (kind === 'increment') {
       fields.push(`"by":${by}`)
-      if (done && this.#clocks.returnsCount) fields.push(`"value":${done.cell.count}`)
+      if (done && this.#returnsCount) fields.push(`"value":${done.cell.count}`)
     } else if (kind === 'write') fields.push(`"value":${version!.text}`)
     else if (kind === 'cas') {
       fields.push(`"expect":${expect},"value":${version!.text}`)

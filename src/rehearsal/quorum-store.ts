@@ -74,7 +74,7 @@ export class QuorumStore implements Store {
           found,
           applied: true,
         }
-        this.#network.toClient(operation, node, answer, () => {
+        this.#network.toClient(operation, node, () => {
           if (++stored === this.#writeQuorum) reply(answer)
         })
       })
@@ -97,7 +97,7 @@ export class QuorumStore implements Store {
           found: cell,
           applied: true,
         }
-        this.#network.toClient(operation, node, answer, () => {
+        this.#network.toClient(operation, node, () => {
           names.push(nodeName(node))
           if (!newest || cell.rank > newest.rank) newest = cell
           if (++answered < this.#readQuorum) return

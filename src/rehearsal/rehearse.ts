@@ -37,7 +37,7 @@ export function* rehearse(
   const [clockRandom, networkRandom, storeRandom, clientRandom] = randomStreams(seed, 4)
   const scheduler = new Scheduler()
   const clocks = new Clocks(scenario, clockRandom)
-  const output = new Output(clocks)
+  const output = new Output(clocks, workload.returnsCount)
   const network = new Network(scheduler, networkRandom, store, store.nodes)
   const keys = makeKeys(scenario)
   const cells = Array.from(keys.values())

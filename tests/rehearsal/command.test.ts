@@ -28,6 +28,15 @@ describe('misread rehearse', () => {
     expect((await misread(next.split(' '))).status).toBe(1)
   })
 
+  it('packs the history when asked, and quotes a path that needs it', async () => {
+    const out = join(folder, "the harbour's")
+    const ran = await misread(['rehearse', '--scenario', 'sound', '--lasts', '300ms', '--gzip', '--out', out])
+    expect(ran.status).toBe(0)
+    expect((await readdir(out)).sort()).toEqual(['history.ndjson.gz', 'scenario.yaml', 'truth.ndjson'])
+    expect(ran.out).toContain(`Next: misread check '${join(folder, "the harbour'\\''s")}/history.ndjson.gz'`)
+    expect((await misread(['check', join(out, 'history.ndjson.gz')])).status).toBe(0)
+  })
+
   it('plays what it wrote and what it prints, to the same end', async () => {
     const one = join(folder, 'again-1')
     const two = join(folder, 'again-2')

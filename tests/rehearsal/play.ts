@@ -1,5 +1,6 @@
 /** Plays a rehearsal in memory, and checks what it recorded. */
 
+import { createHash } from 'node:crypto'
 import { check } from '../../src/findings/check.js'
 import type { Result } from '../../src/findings/result.js'
 import { readHistory } from '../../src/history/read.js'
@@ -60,4 +61,10 @@ export async function checked(
 /** What is wrong with an answer or a change, as opposed to one that nobody knows of. */
 export function isHarm({ effect }: TruthHit): boolean {
   return effect !== 'unsure' && effect !== 'late'
+}
+
+/** SHA-256 of history and truth of a named scenario with seed 1. */
+export function digest(name: string): string {
+  const { history, truth } = play(named(name), 1)
+  return createHash('sha256').update(history).update(truth).digest('hex')
 }
