@@ -17,25 +17,21 @@ const BREADTH = 200
 const REACH = 500
 
 /**
- * Searches for an order of the key's operations under the promise. First as if there were no end of unsure writes
- * once they have begun: without an order then, there is none. Then for an order that uses each only once, among few
- * configurations. Only then those values are counted of which too many were used.
+ * Searches for an order of the key's operations under the promise. Where there are unsure writes, first for one that
+ * uses each only once, among few configurations. Then as if there were no end of unsure writes once they have begun:
+ * without an order then, there is none. Only then those values are counted of which too many were used.
  */
 export function* search(counting: Counting, values: Values, purse: Purse): Generator<void, SearchOutcome> {
   const counted = new Set<number>()
   const all = { counted, countedFrom: 0 }
-  const few = { ...all, breadth: BREADTH }
-  if (counting.key.hasIncrements) {
-    // Each unsure increment counts here, and sums are many: look for an order first.
-    const thrifty = yield* sweep(counting, values, few, purse)
+  let stuck = 0
+  if (counting.key.acked.includes(0)) {
+    const thrifty = yield* sweep(counting, values, { ...all, breadth: BREADTH }, purse)
     if (thrifty.found === 'order' || thrifty.found === 'spent') return thrifty
+    if (thrifty.found === 'none') stuck = thrifty.step
   }
   let outcome = yield* sweep(counting, values, all, purse)
-  if (outcome.found !== 'overuse') return outcome
-  const thrifty = yield* sweep(counting, values, few, purse)
-  if (thrifty.found === 'order' || thrifty.found === 'spent') return thrifty
   // Counting from shortly before the thrifty search got stuck is often enough to see that there is no order.
-  const stuck = thrifty.found === 'none' ? thrifty.step : 0
   for (let reach = REACH; outcome.found === 'overuse'; reach *= 4) {
     for (const value of outcome.values) counted.add(value)
     outcome = yield* sweep(counting, values, { counted, countedFrom: Math.max(0, stuck - reach) }, purse)
