@@ -20,13 +20,13 @@ export function causalOrderTrouble(
 ): string | undefined {
   const { takesPart, unwritten } = keys
   if (unwritten.length > 0) return `operation ${unwritten[0]} returned what nobody wrote`
-  const place = new Map<number, number>()
-  for (const i of order) {
+  const place = new Int32Array(keys.recorded.history.count).fill(-1)
+  for (const [at, i] of order.entries()) {
     if (!takesPart.has(i)) return `operation ${i} does not take part`
-    if (place.has(i)) return `operation ${i} stands in the order twice`
-    place.set(i, place.size)
+    if (place[i] >= 0) return `operation ${i} stands in the order twice`
+    place[i] = at
   }
-  for (const i of takesPart) if (!place.has(i)) return `operation ${i} is missing in the order`
+  for (const i of takesPart) if (place[i] < 0) return `operation ${i} is missing in the order`
   const walk = new Walk(keys, place, converges)
   for (const i of order) {
     const trouble = walk.step(i)
@@ -38,7 +38,8 @@ export function causalOrderTrouble(
 class Walk {
   readonly #keys: CausalKeys
   readonly #recorded: Recorded
-  readonly #place: ReadonlyMap<number, number>
+  /** operation → its place in the order */
+  readonly #place: Int32Array
   readonly #converges: boolean
   /** client → what its next operation depends on */
   readonly #now = new Map<number, Past>()
@@ -48,23 +49,24 @@ class Walk {
   /** of clients with unsure operations: what they depended on after each acked one */
   readonly #steps = new Map<number, { i: number; past: Past }[]>()
   /** acked operation → its place in its session */
-  readonly #at = new Map<number, number>()
+  readonly #at: Int32Array
   /** write → its past, itself included */
   readonly #pastOf = new Map<number, Past>()
-  /** client and key → the client's acked writes of the key so far */
-  readonly #writesOf = new Map<string, number[]>()
+  /** key → client → the client's acked writes of the key so far */
+  readonly #writesOf = new Map<number, Map<number, number[]>>()
 
-  constructor(keys: CausalKeys, place: ReadonlyMap<number, number>, converges: boolean) {
+  constructor(keys: CausalKeys, place: Int32Array, converges: boolean) {
     this.#keys = keys
     this.#recorded = keys.recorded
     this.#place = place
+    this.#at = new Int32Array(place.length)
     this.#converges = converges
     for (const i of keys.takesPart)
       if (!keys.recorded.isAcked(i)) this.#steps.set(keys.recorded.history.client[i], [])
   }
 
   step(i: number): string | undefined {
-    const { client, key, clients } = this.#recorded.history
+    const { client, key } = this.#recorded.history
     const c = client[i]
     const isAcked = this.#recorded.isAcked(i)
     const last = this.#last.get(c)
@@ -74,11 +76,7 @@ class Walk {
       : false
     if (isLate) return `operation ${i} stands after a later one of its client in the order`
     // Nothing later depends on an unsure operation, so later ones may stand before it.
-    const before = isAcked ? this.#now.get(c) : this.#pastAt(i)
-    const past: Past = {
-      of: before ? before.of.slice() : new Int32Array(clients.size),
-      unsure: new Set(before?.unsure),
-    }
+    const past = isAcked ? (this.#now.get(c) ?? this.#copy(undefined)) : this.#copy(this.#pastAt(i))
     const v = this.#keys.source.get(i)
     if (v !== undefined) {
       if (v >= 0) {
@@ -90,33 +88,38 @@ class Walk {
         for (const u of seen.unsure) past.unsure.add(u)
       }
       for (const w of this.#newest(past, key[i])) {
-        if (w === v) continue
+        // What stands before v in the order does not depend on it.
+        if (w === v || (v >= 0 && this.#place[w] < this.#place[v])) continue
         if (v < 0) return `operation ${i} returned the initial value, and it depends on ${w}, a write over it`
         if (this.#isIn(v, this.#pastOf.get(w)!))
           return `operation ${i} returned what ${w}, on which it depends, had overwritten`
-        if (this.#converges && this.#place.get(w)! > this.#place.get(v)!)
-          return `operation ${w} must come before ${v} in the order`
+        if (this.#converges) return `operation ${w} must come before ${v} in the order`
       }
     }
     if (isAcked) {
-      this.#at.set(i, past.of[c])
+      this.#at[i] = past.of[c]
       past.of[c]++
       this.#now.set(c, past)
-      this.#steps.get(c)?.push({ i, past })
+      this.#steps.get(c)?.push({ i, past: this.#copy(past) })
       this.#last.set(c, i)
     } else {
       past.unsure.add(i)
       this.#unsure.set(c, [...(this.#unsure.get(c) ?? []), i])
     }
     if (!this.#recorded.writes(i)) return undefined
-    this.#pastOf.set(i, past)
-    if (isAcked) {
-      const name = `${c} ${key[i]}`
-      const writes = this.#writesOf.get(name)
-      if (writes) writes.push(i)
-      else this.#writesOf.set(name, [i])
-    }
+    this.#pastOf.set(i, this.#copy(past))
+    if (!isAcked) return undefined
+    const ofKey = this.#writesOf.get(key[i]) ?? new Map<number, number[]>()
+    this.#writesOf.set(key[i], ofKey)
+    const writes = ofKey.get(c)
+    if (writes) writes.push(i)
+    else ofKey.set(c, [i])
     return undefined
+  }
+
+  #copy(past: Past | undefined): Past {
+    const { clients } = this.#recorded.history
+    return { of: past ? past.of.slice() : new Int32Array(clients.size), unsure: new Set(past?.unsure) }
   }
 
   /** What a client depended on when it sent an unsure operation. */
@@ -129,18 +132,16 @@ class Walk {
   #newest(past: Past, keyId: number): number[] {
     const { key } = this.#recorded.history
     const newest = [...past.unsure].filter((u) => key[u] === keyId)
-    past.of.forEach((n, d) => {
-      const writes = this.#writesOf.get(`${d} ${keyId}`)
-      if (n === 0 || !writes) return
-      const last = writes.findLast((w) => this.#at.get(w)! < n)
+    for (const [d, writes] of this.#writesOf.get(keyId) ?? []) {
+      const last = writes.findLast((w) => this.#at[w] < past.of[d])
       if (last !== undefined) newest.push(last)
-    })
+    }
     return newest
   }
 
   #isIn(v: number, past: Past): boolean {
     if (!this.#recorded.isAcked(v)) return past.unsure.has(v)
-    return this.#at.get(v)! < past.of[this.#recorded.history.client[v]]
+    return this.#at[v] < past.of[this.#recorded.history.client[v]]
   }
 }
 
