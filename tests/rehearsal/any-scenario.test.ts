@@ -90,7 +90,7 @@ async function expectLaws(what: Scenario, seed: number): Promise<Set<string>> {
 
 describe('any rehearsal', () => {
   it.each([
-    ['with leaders', withLeaders, 300],
+    ['with leaders', withLeaders, 150],
     ['without leaders', leaderless, 150],
   ])(
     '%s: what is broken was harmed, and what can be proven is found',

@@ -58,13 +58,14 @@ const EXPECTED: Record<string, Expected> = {
     causes: ['small-quorum'],
   },
 }
-const SEEDS = 25
+/** Fewer where each shows hundreds of findings. */
+const seedsOf = (name: string): number => (name === 'follower-reads' ? 10 : 25)
 
 describe.each(Object.entries(EXPECTED))('%s', (name, { shown, also = [], causes }) => {
   it('makes its findings and no others, and the truth explains each', async () => {
     const kinds = new Set<string>()
     const seenCauses = new Set<string>()
-    for (let seed = 1; seed <= SEEDS; seed++) {
+    for (let seed = 1; seed <= seedsOf(name); seed++) {
       const { history, hits } = play(named(name), seed)
       const harm = hits.filter(isHarm)
       for (const { cause } of harm) seenCauses.add(cause)

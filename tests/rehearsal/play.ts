@@ -1,12 +1,14 @@
 /** Plays a rehearsal in memory, and checks what it recorded. */
 
 import { createHash } from 'node:crypto'
+import { stringify } from 'yaml'
 import { check } from '../../src/findings/check.js'
 import type { Result } from '../../src/findings/result.js'
 import { readHistory } from '../../src/history/read.js'
 import { textSource } from '../../src/history/source.js'
 import { parsePromise } from '../../src/promises/parse-request.js'
 import { rehearse } from '../../src/rehearsal/rehearse.js'
+import { parseScenario } from '../../src/rehearsal/scenario-file.js'
 import { type Scenario, type ScenarioText, scenarioSchema } from '../../src/rehearsal/scenario-schema.js'
 import { SCENARIOS } from '../../src/rehearsal/scenarios.js'
 import type { Account, TruthHit } from '../../src/rehearsal/truth-schema.js'
@@ -19,8 +21,9 @@ export interface Played {
   readonly hits: readonly TruthHit[]
 }
 
+/** As a file of it would be read. */
 export function scenario(text: Omit<ScenarioText, 'rehearsal'>): Scenario {
-  return scenarioSchema.parse({ rehearsal: 1, ...text })
+  return parseScenario(stringify({ rehearsal: 1, ...text }), 'scenario.yaml')
 }
 
 export function named(name: string): Scenario {
