@@ -152,7 +152,7 @@ async function promisesFrom(path: string | undefined): Promise<PromiseRequest[]>
 }
 
 /** A glob that no key matches is a mistake: a check of nothing must not pass. */
-function checkGlobs(history: History, globs: readonly string[], where: () => string): void {
+export function checkGlobs(history: History, globs: readonly string[], where: () => string): void {
   for (const glob of globs) {
     const matches = keyGlob(glob)
     let any = false

@@ -79,6 +79,29 @@ export function buildProgram(terminal: Terminal, end: (status: ExitStatus) => vo
       end(await runSurvey(files, options, terminal))
     })
   program
+    .command('freshness')
+    .description('how fresh reads were: the read-after-write curve, and how far stale reads were behind')
+    .argument('<file...>', 'histories: .ndjson, .ndjson.gz, or - for standard input')
+    .option('--keys <glob>', 'only keys that match (repeatable)', collect)
+    .option(
+      '--by <what>',
+      'also for each key (or --keys glob), client or mark',
+      oneOf('key', 'client', 'mark'),
+    )
+    .option(
+      '--clock-error <duration>',
+      'how far clocks may be off, whatever the headers say (2ms)',
+      durationOption,
+    )
+    .option('--format <format>', 'text, json, csv or svg', oneOf('text', 'json', 'csv', 'svg'), 'text')
+    .option('--out <dir>', 'write all of them to a folder')
+    .option('--force', 'let --out write into a folder that is not empty')
+    .addHelpText('after', '\nExample:\n  misread freshness histories/redis-replica.ndjson.gz --by client\n')
+    .action(async (files: string[], options) => {
+      const { runFreshness } = await import('./freshness.js')
+      end(await runFreshness(files, options, terminal))
+    })
+  program
     .command('verify')
     .description('check a certificate against the history that it is about, independently of the checks')
     .argument('<certificate>', 'made by misread check --certificate')

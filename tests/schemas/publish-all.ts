@@ -2,6 +2,7 @@
 import { certificatePublication } from './certificate-publication.js'
 import { comparisonPublication } from './comparison-publication.js'
 import { dumpPublication } from './dump-publication.js'
+import { freshnessPublication } from './freshness-publication.js'
 import { historyPublication } from './history-publication.js'
 import { mappingPublication } from './mapping-publication.js'
 import { publish } from './publish.js'
@@ -14,6 +15,7 @@ for (const publication of [
   certificatePublication,
   comparisonPublication,
   dumpPublication,
+  freshnessPublication,
   historyPublication,
   mappingPublication,
   resultPublication,

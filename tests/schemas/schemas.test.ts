@@ -2,6 +2,7 @@ import { describe, expect, it } from 'vitest'
 import { certificatePublication } from './certificate-publication.js'
 import { comparisonPublication } from './comparison-publication.js'
 import { dumpPublication } from './dump-publication.js'
+import { freshnessPublication } from './freshness-publication.js'
 import { historyPublication } from './history-publication.js'
 import { mappingPublication } from './mapping-publication.js'
 import { published, schemaText } from './publish.js'
@@ -15,6 +16,7 @@ describe('the published JSON Schemas', () => {
     certificatePublication,
     comparisonPublication,
     dumpPublication,
+    freshnessPublication,
     historyPublication,
     mappingPublication,
     resultPublication,
