@@ -9,7 +9,7 @@ import { CAUSAL_PROMISES } from '../promises/request.js'
 const whole = z.int().nonnegative()
 const ns = z
   .string()
-  .regex(/^[0-9]+$/)
+  .regex(/^[0-9]{1,40}$/)
   .describe('nanoseconds')
 const operations = z.array(whole).describe('numbers of operations')
 

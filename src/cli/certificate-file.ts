@@ -21,6 +21,8 @@ interface Asked {
 export class CertificateFile {
   readonly listeners: Pick<CheckRequest, 'onKey' | 'onCausal'>
   readonly #output: WholeOutput
+  /** promises over all keys that nothing was said about yet */
+  readonly #untold: Set<string>
   #claims = 0
 
   /** Throws UsageError where the file cannot be written, or an input is no file whose digest could be compared. */
@@ -44,12 +46,15 @@ export class CertificateFile {
 
   private constructor(output: WholeOutput, history: History, asked: Asked) {
     this.#output = output
+    this.#untold = new Set(asked.promises.filter(({ causal }) => causal).map(({ name }) => name))
     this.listeners = {
       onKey: async (key, decided) => {
         for (const claim of keyClaims(key, decided, asked.newBudget)) await this.#write(claim)
       },
-      onCausal: async (promise, index, found) =>
-        this.#write(causalClaim(history, index, promise, asked.keys, found)),
+      onCausal: async (promise, index, found) => {
+        this.#untold.delete(promise.name)
+        await this.#write(causalClaim(history, index, promise, asked.keys, found))
+      },
     }
   }
 
@@ -58,8 +63,9 @@ export class CertificateFile {
     await this.#output.write(`${JSON.stringify(claim)}\n`)
   }
 
-  /** Writes the last line and gives the file its name. */
+  /** Writes the last lines and gives the file its name. What an interrupted check did not come to is undecided. */
   async commit(): Promise<void> {
+    for (const name of this.#untold) await this.#write({ claim: 'undecided', promises: [name] })
     await this.#output.write(`${JSON.stringify({ end: true, claims: this.#claims })}\n`)
     await this.#output.commit()
   }

@@ -2,6 +2,7 @@
  * What a verification found, for the terminal.
  */
 import type { Verification } from '../certificates/verify/verify.js'
+import { duration } from '../findings/telling.js'
 import { Page } from './page.js'
 import { counted, cut } from './printable.js'
 
@@ -10,7 +11,7 @@ const TOLD = 20
 
 /** The verification as text: what was refused and where, or what was proved and what was not. */
 export function verifyText(
-  { refusals, proved, unproved, undecided, leftOut }: Verification,
+  { about, refusals, proved, unproved, undecided, leftOut }: Verification,
   { width, colour }: { width: number; colour: boolean },
 ): string {
   const page = new Page(width, colour)
@@ -41,5 +42,17 @@ export function verifyText(
   }
   if (undecided > 0) page.prose(`Undecided, so nothing to prove: ${counted(undecided, 'claim')}.`, '', yellow)
   if (leftOut > 0) page.prose(`Left out, where the promise means nothing: ${counted(leftOut, 'claim')}.`)
+  // Nobody can refuse what was never asked: the reader has to see what was.
+  if (about) page.prose(`It is about ${subjectOf(about)}.`)
   return page.toString()
+}
+
+/** The promises with their keys, and the clock error that they were held to. */
+function subjectOf({ promises, onlyKeys, clockErrorNs }: NonNullable<Verification['about']>): string {
+  const named = promises
+    .slice(0, TOLD)
+    .map(({ name, keys }) => cut(keys === '**' ? name : `${name} on ${keys}`, 100))
+  if (promises.length > TOLD) named.push(`${promises.length - TOLD} promises more`)
+  const keys = onlyKeys ? `keys ${onlyKeys.map((glob) => cut(glob, 60)).join(', ')} alone` : 'every key'
+  return `${named.join('; ')}; on ${keys}; with clocks at most ${duration(BigInt(clockErrorNs))} off`
 }

@@ -333,7 +333,7 @@ describe('certificates', () => {
     const accepted = await misread(['verify', path, '--history', HARBOUR])
     expect([accepted.status, accepted.err]).toEqual([0, ''])
     expect(accepted.out).toMatch(
-      /^accepted\nProved: \d+ claims that a promise holds, \d+ claims that one is broken\.\n$/,
+      /^accepted\nProved: \d+ claims that a promise holds, \d+ claims that one is broken\.\nIt is about linearizable; on every key; with clocks at most \d+ [nµm]?s off\.\n$/,
     )
     const other = await misread(['verify', path, '--history', file('other.ndjson', SOUND)])
     expect(other.status).toBe(1)
@@ -354,5 +354,24 @@ describe('certificates', () => {
     expect((await misread(['check', input, '--certificate', path])).status).toBe(0)
     const { status, out } = await misread(['verify', path, '--history', input])
     expect([status, out]).toEqual([0, expect.stringContaining('Proved: 3,000 claims that a promise holds')])
+  })
+
+  it('of an interrupted check are accepted, and prove what was decided by then', async () => {
+    const path = join(folder, 'interrupted.certificate.ndjson')
+    const args = ['check', HARBOUR, '--promise', 'linearizable', '--promise', 'causal', '--certificate', path]
+    expect((await misread(args, { signal: AbortSignal.abort() })).status).toBe(130)
+    const { status, out } = await misread(['verify', path, '--history', HARBOUR])
+    expect([status, out]).toEqual([0, expect.stringMatching(/Undecided, so nothing to prove: \d\d+ claims/)])
+  })
+
+  it('say what they are about: what was not asked cannot be missing', async () => {
+    const input = file('two.ndjson', SOUND)
+    const path = join(folder, 'two.certificate.ndjson')
+    const asked = ['--promise', 'durable', '--keys', '**', '--clock-error', '2ms']
+    expect((await misread(['check', input, ...asked, '--certificate', path])).status).toBe(0)
+    const { out } = await misread(['verify', path, '--history', input])
+    expect(out).toContain('It is about durable; on keys ** alone; with clocks at most 2 ms off.')
+    const json = JSON.parse((await misread(['verify', path, '--history', input, '--format', 'json'])).out)
+    expect(json).toMatchObject({ accepted: true, about: { clockErrorNs: '2000000', onlyKeys: ['**'] } })
   })
 })

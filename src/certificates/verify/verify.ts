@@ -21,6 +21,8 @@ import { Recorded } from './recorded.js'
 import { type Claimed, Rules, rowOf } from './rules.js'
 import { losesUpdates } from './updates.js'
 
+type About = Pick<HeaderLine, 'promises' | 'clockErrorNs' | 'onlyKeys'>
+
 export interface Refusal {
   /** line of the certificate, 1-based; missing where something is missing in it */
   readonly line?: number
@@ -30,6 +32,8 @@ export interface Refusal {
 }
 
 export interface Verification {
+  /** what the header says that the certificate is about; missing where there is none */
+  readonly about?: About
   readonly refusals: readonly Refusal[]
   /** claims proved, by what they say */
   readonly proved: { readonly holds: number; readonly broken: number }
@@ -112,7 +116,8 @@ export class Verifier {
     if (!this.#isOver) this.#refusals.push({ why: 'the certificate has no last line: it was cut short' })
     if (this.#header) this.#lookForGaps(this.#header)
     const { holds, broken, unproved, undecided, leftOut } = this.#tally
-    return { refusals: this.#refusals, proved: { holds, broken }, unproved, undecided, leftOut }
+    const about = this.#header ? { about: aboutOf(this.#header) } : {}
+    return { ...about, refusals: this.#refusals, proved: { holds, broken }, unproved, undecided, leftOut }
   }
 
   #begin(header: HeaderLine): void {
@@ -279,6 +284,10 @@ export class Verifier {
       }
     }
   }
+}
+
+function aboutOf({ promises, clockErrorNs, onlyKeys }: HeaderLine): About {
+  return { promises, clockErrorNs, ...(onlyKeys ? { onlyKeys } : {}) }
 }
 
 function whatIsWrong({ issues }: z.ZodError): string {
