@@ -41,8 +41,10 @@ describe('what is decided is proved', () => {
   })
 
   it.each(FAMILIES)('on long %s keys, true or nearly so', async (family) => {
+    // The smallest conflict of a long key of several sizes takes its time to find.
+    const most = family === 'sizes' ? 60 : 120
     await fc.assert(
-      fc.asyncProperty(lifelikeKey(family, { least: 40, most: 120, bends: [0, 2] }), async ({ key }) => {
+      fc.asyncProperty(lifelikeKey(family, { least: 40, most, bends: [0, 2] }), async ({ key }) => {
         const text = keyText(key)
         const { lines } = await certify(text, ['linearizable', 'coherent', 'causal'])
         const { refusals } = await verify(lines, text)
