@@ -61,8 +61,17 @@ const leaderless: fc.Arbitrary<Omit<ScenarioText, 'rehearsal'>> = fc
       .map((fault) => ('node' in fault ? { ...fault, node: Math.min(fault.node, nodes) } : fault)),
   }))
 
+/** Values written again and again, and keys deleted; short, since it takes a search to decide them. */
+const repeating = withLeaders.chain((text) =>
+  fc
+    .record({ vessels: fc.integer({ min: 1, max: 4 }), deletes: fc.constantFrom(0, 0.3) })
+    .map((more) => ({ ...text, workload: { ...text.workload, clients: 3, pause: '15ms', ...more } })),
+)
+
 async function expectLaws(what: Scenario, seed: number): Promise<Set<string>> {
   const { history, hits } = play(what, seed)
+  // A read of a value that was written twice may be explained by a write that it did not see.
+  const isAmbiguous = what.workload.vessels !== undefined || what.workload.deletes > 0
   const harm = hits.filter(isHarm)
   expect(harm.filter(({ cause }) => cause === 'unknown')).toEqual([])
   const { findings, keys } = await checked(history)
@@ -79,7 +88,7 @@ async function expectLaws(what: Scenario, seed: number): Promise<Set<string>> {
   for (const { key, verdicts } of keys) {
     const verdict = verdicts.linearizable
     if (verdict === 'broken') expect(harmed).toContain(key)
-    if (verdict === 'undecided') continue
+    if (verdict === 'undecided' || isAmbiguous) continue
     // Leases tie a version to the one before, which zones do not know.
     if (key.startsWith('berth/'))
       expect([key, verdict]).toEqual([key, provable.has(key) ? 'broken' : 'holds'])
@@ -92,6 +101,7 @@ describe('any rehearsal', () => {
   it.each([
     ['with leaders', withLeaders, 150],
     ['without leaders', leaderless, 150],
+    ['whose values repeat', repeating, 200],
   ])(
     '%s: what is broken was harmed, and what can be proven is found',
     async (_, text, numRuns) => {
