@@ -15,7 +15,6 @@ import { PromiseTrouble, parsePromise } from '../promises/parse-request.js'
 import type { PromiseRequest } from '../promises/request.js'
 import { compareText } from '../reports/compare-text.js'
 import { jsonReport } from '../reports/json.js'
-import { ndjsonReport } from '../reports/ndjson.js'
 import { textReport } from '../reports/text.js'
 import { CertificateFile } from './certificate-file.js'
 import { sha256Of } from './digests.js'
@@ -23,6 +22,7 @@ import { type ExitStatus, UsageError } from './exit.js'
 import type { BudgetOption } from './options.js'
 import { Progress } from './progress.js'
 import { readResult } from './read-result.js'
+import { formatted, type ResultFormat } from './render.js'
 import { type Terminal, write } from './terminal.js'
 import { prepareFolder, writeWhole } from './write-files.js'
 
@@ -32,7 +32,7 @@ export interface CheckOptions {
   clockError?: bigint
   keys?: string[]
   budget?: BudgetOption
-  format: 'text' | 'json' | 'ndjson'
+  format: ResultFormat
   out?: string
   certificate?: string
   force?: boolean
@@ -98,15 +98,18 @@ export async function runCheck(
     await writeWhole(join(options.out, 'result.json'), jsonReport(complete))
     const report = textReport(complete, { width: 100, colour: false, limit: options.limit, out: options.out })
     await writeWhole(join(options.out, 'report.txt'), report)
+    const shape = { limit: options.limit, width: 100, colour: false }
+    await writeWhole(join(options.out, 'report.md'), await formatted(complete, 'markdown', shape))
+    await writeWhole(join(options.out, 'junit.xml'), await formatted(complete, 'junit', shape))
   }
   const { width, colour } = terminal
   const { out, limit, format } = options
-  const shown =
-    format === 'json'
-      ? jsonReport(result)
-      : format === 'ndjson'
-        ? await ndjsonReport(result)
-        : textReport(result, { width, colour, limit, ...(out === undefined ? {} : { out }) })
+  const shown = await formatted(result, format, {
+    width,
+    colour,
+    limit,
+    ...(out === undefined ? {} : { out }),
+  })
   await write(terminal.out, shown)
   if (!baseline || result.exit === 130) return result.exit
   const comparison = compareResults(baseline, result)

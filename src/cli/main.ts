@@ -45,8 +45,8 @@ export function buildProgram(terminal: Terminal, end: (status: ExitStatus) => vo
     )
     .option(
       '--format <format>',
-      'text, json, or ndjson (findings alone, one a line)',
-      oneOf('text', 'json', 'ndjson'),
+      'text, json, ndjson (findings alone, one a line), markdown or junit',
+      oneOf('text', 'json', 'ndjson', 'markdown', 'junit'),
       'text',
     )
     .option('--out <dir>', 'write result, report and counterexamples to a folder')
@@ -100,6 +100,22 @@ export function buildProgram(terminal: Terminal, end: (status: ExitStatus) => vo
     .action(async (files: string[], options) => {
       const { runFreshness } = await import('./freshness.js')
       end(await runFreshness(files, options, terminal))
+    })
+  program
+    .command('render')
+    .description('a saved result in another format')
+    .argument('<result>', 'result of misread check, JSON')
+    .option(
+      '--format <format>',
+      'text, json, ndjson, markdown or junit',
+      oneOf('text', 'json', 'ndjson', 'markdown', 'junit'),
+      'text',
+    )
+    .option('--limit <n>', 'findings in text and Markdown', countOption, 20)
+    .addHelpText('after', '\nExample:\n  misread render findings/result.json --format markdown\n')
+    .action(async (result: string, options) => {
+      const { runRender } = await import('./render.js')
+      end(await runRender(result, options, terminal))
     })
   program
     .command('verify')
