@@ -34,9 +34,10 @@ export function boundsTrouble(
   const surely = increments.filter(
     (i) => i !== from && recorded.isAcked(i) && isAfterFrom(i) && isBeforeTo(i),
   )
+  const isSure = new Set(surely)
   const isOut = (i: number): boolean =>
     i === from || (i !== to && ((from >= 0 && rules.mustPrecede(i, from)) || recorded.precedes(to, i)))
-  const maybe = increments.filter((i) => !isOut(i) && !surely.includes(i))
+  const maybe = increments.filter((i) => !isOut(i) && !isSure.has(i))
   const sum = (some: readonly number[]): bigint => some.reduce((total, i) => total + size(i), 0n)
   const least = sum(surely) + sum(maybe.filter((i) => size(i) < 0n))
   const most = sum(surely) + sum(maybe.filter((i) => size(i) > 0n))

@@ -77,6 +77,11 @@ export class Recorded {
     return this.oneClock(a, b) ? 0n : this.#uncertaintyNs
   }
 
+  /** Whether a time is earlier than another, whatever clocks showed the two. */
+  isSurelyEarlier(ns: bigint, than: bigint): boolean {
+    return ns + this.#uncertaintyNs < than
+  }
+
   /** Session order: what one client did first. Where the times allow both ways round, the earlier line. */
   inSession(a: number, b: number): boolean {
     const { client, hasEnd } = this.history

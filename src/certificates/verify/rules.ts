@@ -55,6 +55,9 @@ export class Rules {
   readonly #isCounter: boolean
   /** acked writes of the key */
   readonly #writes: readonly number[]
+  /** the same, by their start; and by their end, the last first */
+  #byStart: readonly number[] | undefined
+  #byEnd: readonly number[] | undefined
   readonly #closing = new Map<number, boolean>()
 
   /** `operations`: all of the key's that count. */
@@ -89,10 +92,15 @@ export class Rules {
     if (answer === undefined) {
       const { recorded } = this
       const settle = BigInt(this.claimed.settleNs ?? 0)
-      answer = this.#writes.every(
-        (w) =>
-          recorded.precedes(w, b) && recorded.end(w) + settle + recorded.slack(w, b) <= recorded.start(b),
-      )
+      this.#byEnd ??= sorted(this.#writes, (w) => -recorded.end(w))
+      answer = true
+      for (const w of this.#byEnd) {
+        // Those that ended earlier still are as certainly over on any clock.
+        if (recorded.isSurelyEarlier(recorded.end(w) + settle, recorded.start(b))) break
+        answer =
+          recorded.precedes(w, b) && recorded.end(w) + settle + recorded.slack(w, b) <= recorded.start(b)
+        if (!answer) break
+      }
       this.#closing.set(b, answer)
     }
     return answer
@@ -132,10 +140,32 @@ export class Rules {
   isFresh(w: number, r: number): boolean {
     const most = this.claimed.versions
     if (most === undefined) return true
+    const { recorded } = this
+    if (w >= 0 && !recorded.isAcked(w)) return true
+    this.#byStart ??= sorted(this.#writes, (v) => recorded.start(v))
     let between = 0
-    for (const v of this.#writes) {
-      if (v !== w && (w < 0 || this.recorded.precedes(w, v)) && this.recorded.precedes(v, r)) between++
+    for (let at = countUpTo(this.#byStart, (v) => recorded.start(v), recorded.start(r)) - 1; at >= 0; at--) {
+      const v = this.#byStart[at]
+      if (w >= 0 && recorded.start(v) < recorded.end(w)) break
+      if (v !== w && (w < 0 || recorded.precedes(w, v)) && recorded.precedes(v, r)) between++
+      if (between > most) return false
     }
-    return between <= most
+    return true
   }
+}
+
+function sorted(operations: readonly number[], by: (i: number) => bigint): number[] {
+  return [...operations].sort((a, b) => (by(a) < by(b) ? -1 : by(a) > by(b) ? 1 : 0))
+}
+
+/** How many of sorted operations are at most at this time. */
+function countUpTo(operations: readonly number[], by: (i: number) => bigint, time: bigint): number {
+  let low = 0
+  let high = operations.length
+  while (low < high) {
+    const middle = (low + high) >> 1
+    if (by(operations[middle]) <= time) low = middle + 1
+    else high = middle
+  }
+  return low
 }
