@@ -4,6 +4,7 @@
  */
 import { z } from 'zod'
 import type { Samples } from './samples.js'
+import { type Spans, sortedSpans } from './spans.js'
 import { wilson } from './wilson.js'
 
 const count = z.int().min(0)
@@ -77,14 +78,15 @@ export function sumUp(name: string, samples: Samples, places: Int32Array): Fresh
   const after: number[] = []
   for (const i of places) {
     if (samples.isStale[i] === 1) {
-      stale.push(samples.staleNs[i])
+      stale.push(i)
       behind.push(samples.behind[i])
     }
-    if (samples.ageNs[i] !== Number.POSITIVE_INFINITY) after.push(i)
+    if (samples.isAfterWrite[i] === 1) after.push(i)
   }
-  const ages = Int32Array.from(after).sort((a, b) => samples.ageNs[a] - samples.ageNs[b])
-  const inOrder = (numbers: number[]): Float64Array => Float64Array.from(numbers).sort()
-  const [staleNs, versions] = [inOrder(stale), inOrder(behind)]
+  const { ageNs } = samples
+  const ages = Int32Array.from(after).sort((a, b) => (ageNs[a] < ageNs[b] ? -1 : ageNs[a] > ageNs[b] ? 1 : 0))
+  const staleNs = sortedSpans(samples.staleNs, Int32Array.from(stale))
+  const versions = Float64Array.from(behind).sort()
   return {
     name,
     reads: places.length,
@@ -111,12 +113,12 @@ export function sumUp(name: string, samples: Samples, places: Int32Array): Fresh
   }
 }
 
-function digits(value: number): string {
-  return BigInt(Math.round(value)).toString()
+function digits(value: number | bigint): string {
+  return BigInt(value).toString()
 }
 
-/** The nearest-rank quantile of sorted numbers, at least one. */
-export function rank(sorted: Float64Array, share: number): number {
+/** The nearest-rank quantile of sorted spans or numbers, at least one. */
+export function rank<S extends Spans>(sorted: S, share: number): S[number] {
   return sorted[Math.max(0, Math.ceil(share * sorted.length) - 1)]
 }
 

@@ -2,24 +2,24 @@
  * How fresh each read was: how long after the newest write before it, how long and how many writes behind
  * (docs/freshness.md).
  */
-import { writesBetween } from '../deciders/version-bound.js'
 import { CAS, type History, NO_VALUE, READ } from '../history/columns.js'
-import { countPairs } from '../order/counting.js'
 import { gatherKey, type KeyHistory, type KeyIndex } from '../order/key-history.js'
-import { precedes } from '../order/precedence.js'
-import { isRead, isWrite, readValue } from '../order/roles.js'
+import { isRead, readValue } from '../order/roles.js'
 import { findVersions } from '../order/versions.js'
-import { linearizable } from '../promises/linearizable.js'
+import { makeSpans, type Spans, setGap } from './spans.js'
+import { WritesOfKey } from './writes-of-key.js'
 
 /** One entry a read that could be judged; parallel arrays. */
 export interface Samples {
   readonly count: number
   /** operation index of the read */
   readonly operation: Int32Array
-  /** nanoseconds from the end of the newest write acked before it to its start; Infinity where there is none */
-  readonly ageNs: Float64Array
+  /** 1 where an acked write precedes it */
+  readonly isAfterWrite: Uint8Array
+  /** nanoseconds from the end of the newest write acked before it to its start; 0 where there is none */
+  readonly ageNs: Spans
   /** nanoseconds from the earliest end of a write that certainly overwrote what it returned to its start; 0: fresh */
-  readonly staleNs: Float64Array
+  readonly staleNs: Spans
   /** how many acked writes certainly overwrote it */
   readonly behind: Int32Array
   /** 1 where a write had certainly overwritten what it returned */
@@ -37,14 +37,14 @@ export interface LeftOut {
   readonly wrong: number
 }
 
-/** Judges every read of the keys wanted. O(n log n), and the writes that a stale read is behind. */
+/** Judges every read of the keys wanted. O(n log n), and the writes on a read's own clock within the clock error of it. */
 export function takeSamples(
   history: History,
   index: KeyIndex,
   clockErrorNs: bigint,
   isWanted: (keyId: number) => boolean,
 ): Samples {
-  const taker = new Taker(history.count)
+  const taker = new Taker(history)
   for (let keyId = 0; keyId + 1 < index.offset.length; keyId++) {
     if (index.offset[keyId] === index.offset[keyId + 1] || !isWanted(keyId)) continue
     taker.take(gatherKey(history, index, keyId, clockErrorNs))
@@ -54,8 +54,9 @@ export function takeSamples(
 
 class Taker {
   readonly #operation: Int32Array
-  readonly #age: Float64Array
-  readonly #stale: Float64Array
+  readonly #isAfterWrite: Uint8Array
+  readonly #age: Spans
+  readonly #stale: Spans
   readonly #behind: Int32Array
   readonly #isStale: Uint8Array
   #count = 0
@@ -63,10 +64,11 @@ class Taker {
   #ambiguous = 0
   #wrong = 0
 
-  constructor(most: number) {
+  constructor({ count: most, times }: History) {
     this.#operation = new Int32Array(most)
-    this.#age = new Float64Array(most)
-    this.#stale = new Float64Array(most)
+    this.#isAfterWrite = new Uint8Array(most)
+    this.#age = makeSpans(times, most)
+    this.#stale = makeSpans(times, most)
     this.#behind = new Int32Array(most)
     this.#isStale = new Uint8Array(most)
   }
@@ -76,6 +78,7 @@ class Taker {
     return {
       count: n,
       operation: this.#operation.subarray(0, n),
+      isAfterWrite: this.#isAfterWrite.subarray(0, n),
       ageNs: this.#age.subarray(0, n),
       staleNs: this.#stale.subarray(0, n),
       behind: this.#behind.subarray(0, n),
@@ -91,11 +94,9 @@ class Taker {
       this.#counters += reads.length
       return
     }
-    const counting = countPairs(key, linearizable)
     const versions = findVersions(key)
     const wrong = new Set(versions.wrongReads)
-    const newest = new NewestBefore(key)
-    const overwritten = firstOverwrites(key)
+    const writes = new WritesOfKey(key)
     for (const r of reads) {
       const version = versions.readOf[r]
       if (version < 0 && !wrong.has(r)) {
@@ -110,19 +111,15 @@ class Taker {
       const operation = key.operation[r]
       const { times } = key.history
       this.#operation[i] = operation
-      const w = newest.of(r)
-      this.#age[i] =
-        w < 0 ? Number.POSITIVE_INFINITY : Number(times.startNs(operation) - times.endNs(key.operation[w]))
-      const v = versions.writer[version]
-      // By recorded time alone nothing can have overwritten it: then precedence says so, too.
-      if (overwritten(v) > key.start[r]) continue
-      const between = writesBetween(counting, v, r, Number.POSITIVE_INFINITY)
-      if (between.length === 0) continue
-      let first = between[0]
-      for (const each of between) if (key.end[each] < key.end[first]) first = each
-      this.#behind[i] = between.length
+      const { newest, overwriter, overwriters } = writes.before(r, versions.writer[version])
+      if (newest >= 0) {
+        this.#isAfterWrite[i] = 1
+        setGap(this.#age, i, times, key.operation[newest], operation)
+      }
+      if (overwriter < 0) continue
+      this.#behind[i] = overwriters
       this.#isStale[i] = 1
-      this.#stale[i] = Number(times.startNs(operation) - times.endNs(key.operation[first]))
+      setGap(this.#stale, i, times, key.operation[overwriter], operation)
     }
   }
 }
@@ -133,54 +130,4 @@ function isPlainRead(key: KeyHistory, p: number): boolean {
   return (
     key.kind[p] === READ || (key.kind[p] === CAS && key.applied[p] === 0 && readValue(key, p) !== NO_VALUE)
   )
-}
-
-/** The least recorded end of an acked write that starts no earlier than a write (-1: any) ended. */
-function firstOverwrites(key: KeyHistory): (write: number) => number {
-  const writes: number[] = []
-  for (let p = 0; p < key.n; p++) if (key.acked[p] === 1 && isWrite(key, p)) writes.push(p)
-  const least = new Float64Array(writes.length + 1).fill(Number.POSITIVE_INFINITY)
-  for (let i = writes.length - 1; i >= 0; i--) least[i] = Math.min(least[i + 1], key.end[writes[i]])
-  return (write) => {
-    if (write < 0) return least[0]
-    if (key.acked[write] === 0) return Number.POSITIVE_INFINITY
-    let low = 0
-    let high = writes.length
-    while (low < high) {
-      const middle = (low + high) >> 1
-      if (key.start[writes[middle]] < key.end[write]) low = middle + 1
-      else high = middle
-    }
-    return least[low]
-  }
-}
-
-/** Which acked write that certainly precedes a read ended last. */
-class NewestBefore {
-  readonly #key: KeyHistory
-  /** acked writes by recorded end */
-  readonly #byEnd: Int32Array
-
-  constructor(key: KeyHistory) {
-    this.#key = key
-    const writes: number[] = []
-    for (let p = 0; p < key.n; p++) if (key.acked[p] === 1 && isWrite(key, p)) writes.push(p)
-    this.#byEnd = Int32Array.from(writes).sort((a, b) => key.end[a] - key.end[b] || a - b)
-  }
-
-  /** Local index, or -1. Looks at the writes that ended within the clock error before the read began. */
-  of(read: number): number {
-    const { start, end } = this.#key
-    let low = 0
-    let high = this.#byEnd.length
-    while (low < high) {
-      const middle = (low + high) >> 1
-      if (end[this.#byEnd[middle]] <= start[read]) low = middle + 1
-      else high = middle
-    }
-    for (let at = low - 1; at >= 0; at--) {
-      if (precedes(this.#key, this.#byEnd[at], read)) return this.#byEnd[at]
-    }
-    return -1
-  }
 }

@@ -58,8 +58,8 @@ describe('how fresh a read was', () => {
         const taken = new Map<number, Judged>()
         for (let i = 0; i < samples.count; i++) {
           taken.set(samples.operation[i], {
-            age: samples.ageNs[i],
-            stale: samples.staleNs[i],
+            age: samples.isAfterWrite[i] ? Number(samples.ageNs[i]) : Number.POSITIVE_INFINITY,
+            stale: Number(samples.staleNs[i]),
             behind: samples.behind[i],
           })
           stale += samples.isStale[i]
@@ -102,6 +102,7 @@ describe('how fresh a read was', () => {
           const samples = {
             count: reads.length,
             operation: Int32Array.from(reads.keys()),
+            isAfterWrite: Uint8Array.from(reads, ({ age }) => (age === Number.POSITIVE_INFINITY ? 0 : 1)),
             ageNs: Float64Array.from(reads, ({ age }) => age),
             staleNs: Float64Array.from(reads, ({ behind }, i) => (behind > 0 ? 10 * i + 1 : 0)),
             behind: Int32Array.from(reads, ({ behind }) => behind),
