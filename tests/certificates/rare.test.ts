@@ -331,6 +331,17 @@ describe('orders', () => {
       /operation 2 read an increment that began later/,
     ],
     [
+      'a failed cas that saw an increment that began later',
+      keyOf([
+        [0, 1, write(5)],
+        [50, 60, increment()],
+        [10, 20, { op: 'cas', expect: 1, value: 2, applied: false, saw: 6 }],
+      ]),
+      writtenValues,
+      [0, 1, 2],
+      /operation 2 read an increment that began later/,
+    ],
+    [
       'what a failed cas did not find, found at an unknown start',
       keyOf(
         [
