@@ -11,23 +11,17 @@ export interface HardKey {
   readonly values: number
   /** share of the writes that get no answer; half of them took effect, some of those late */
   readonly unsure: number
-  /** one client sees a value that was only ever written long before, and was overwritten */
-  readonly planted?: boolean
-  /** a client more that reads two values in turn, so often: more than unsure writes can explain */
-  readonly flips?: number
+  /**
+   * `stale read`: one client sees a value that was written only long before, now and then, and overwritten.
+   * `turns`: a client more reads two values in turn, once more often than there are writes of the first that it can
+   * see. Each of these reads by itself has a write that explains it.
+   */
+  readonly planted?: 'stale read' | 'turns' | undefined
   readonly seed: number
 }
 
 /** A register that is truly linearizable, but for what is planted. Requests take 100 to 2,000 time units. */
-export function makeHardKey({
-  operations,
-  clients,
-  values,
-  unsure,
-  planted,
-  flips = 0,
-  seed,
-}: HardKey): PlainKey {
+export function makeHardKey({ operations, clients, values, unsure, planted, seed }: HardKey): PlainKey {
   const random = generator(seed)
   const nextFree = Array.from({ length: clients }, () => random() * 1000)
   const records: PlainOperation[] = []
@@ -73,21 +67,44 @@ export function makeHardKey({
     record.outcome = 'unsure'
     if (random() < 0.5) write(record, random() < 0.3 ? at + 20_000 * random() : at)
   }
-  if (planted) {
-    // Written once at the very start, long overwritten when it is read again.
-    const first = records.findIndex(({ op }) => op === 'write')
-    records[first].value = 'planted'
-    delete records[first].outcome
+  if (planted === 'stale read') {
+    const early = records.slice(0, Math.ceil(operations / 50)).filter(({ op }) => op === 'write')
+    for (const record of early) {
+      if (record.value !== 'v0' && record !== early[0]) continue
+      record.value = 'planted'
+      delete record.outcome
+    }
   }
   for (const { apply } of effects.sort((a, b) => a.at - b.at)) apply()
-  if (planted) {
+  if (planted === 'stale read') {
     const reads = records.filter(({ op }) => op === 'read')
     reads[Math.floor(reads.length / 2)].value = 'planted'
   }
-  const middle = records[operations >> 1].start
-  for (let i = 0; i < flips; i++) {
-    const start = middle + 4 * i
-    records.push({ client: 'flips', op: 'read', key: 'k', value: `v${i % 2}`, start, end: start + 2 })
+  return { operations: planted === 'turns' ? [...records, ...turns(records)] : records, clockError: 0 }
+}
+
+/**
+ * Reads of v0 and v1 in turn, in the middle of the records. Between two turns of v0 something else stood there, so each
+ * takes a write of v0 of its own: one turn more than there are such writes, and no order explains them.
+ */
+function turns(records: readonly PlainOperation[]): PlainOperation[] {
+  const from = records[records.length >> 1].start
+  for (let n = 1; ; n++) {
+    const last = from + 8 * n
+    if (inReach(records, 'v0', from, last) >= n) continue
+    return Array.from({ length: 2 * n - 1 }, (_, i) => {
+      const start = from + 4 * i
+      return { client: 'turns', op: 'read', key: 'k', value: `v${i % 2}`, start, end: start + 2 }
+    })
   }
-  return { operations: records, clockError: 0 }
+}
+
+/** How many writes of the value reads from `from` to `to` can see: begun by then, not certainly overwritten before. */
+function inReach(records: readonly PlainOperation[], value: unknown, from: number, to: number): number {
+  const before = records.filter((w) => w.op === 'write' && w.outcome !== 'unsure' && w.end! < from)
+  const newest = Math.max(...before.map(({ start }) => start))
+  return records.filter(
+    (w) =>
+      w.op === 'write' && w.value === value && w.start <= to && (w.outcome === 'unsure' || w.end! >= newest),
+  ).length
 }

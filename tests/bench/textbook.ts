@@ -42,9 +42,11 @@ export function textbookSearch(key: PlainKey, budgetMs: number): boolean | undef
     readonly next: readonly number[]
     at: number
     readonly value: string
+    /** nothing after this one is placed */
+    readonly high: number
     placed: number
   }
-  const stack: Frame[] = [{ next: minimal(), at: 0, value: 'null', placed: -1 }]
+  const stack: Frame[] = [{ next: minimal(), at: 0, value: 'null', high: -1, placed: -1 }]
   for (let steps = 0; stack.length > 0; steps++) {
     if ((steps & 1023) === 0 && performance.now() > until) return undefined
     if (sureLeft === 0) return true
@@ -66,7 +68,8 @@ export function textbookSearch(key: PlainKey, budgetMs: number): boolean | undef
     const after = isWrite ? value : frame.value
     const from = first()
     let name = `${after} ${from}`
-    for (let p = from; p < n && p < from + 4096; p++) if (placed[p]) name += ` ${p - from}`
+    const high = Math.max(frame.high, i)
+    for (let p = from; p <= high; p++) if (placed[p]) name += ` ${p - from}`
     if (seen.has(name) || seen.size > 3_000_000) {
       placed[i] = 0
       low = Math.min(low, i)
@@ -76,7 +79,7 @@ export function textbookSearch(key: PlainKey, budgetMs: number): boolean | undef
     seen.add(name)
     frame.placed = i
     if (isSure) sureLeft--
-    stack.push({ next: minimal(), at: 0, value: after, placed: -1 })
+    stack.push({ next: minimal(), at: 0, value: after, high, placed: -1 })
   }
   return false
 }
