@@ -3,6 +3,7 @@
  */
 import { NO_VALUE, NULL_VALUE, type Values } from '../history/columns.js'
 import { type Counting, countPairs } from '../order/counting.js'
+import { findCounts } from '../order/counts.js'
 import type { KeyHistory } from '../order/key-history.js'
 import { isWrite } from '../order/roles.js'
 import { isUntested } from '../order/untested.js'
@@ -25,6 +26,18 @@ export type KeyKind = 'register' | 'counter' | 'mixed'
 export function kindOfKey(key: KeyHistory): KeyKind {
   if (!key.hasIncrements) return 'register'
   return key.hasWrites ? 'mixed' : 'counter'
+}
+
+/** Whether some read of a register key could have seen several writes, or the key mixes increments with writes. */
+export function isAmbiguous(key: KeyHistory): boolean {
+  return key.hasIncrements ? key.hasWrites : findVersions(key).ambiguous >= 0
+}
+
+/** Whether it may take a search to decide the key. */
+export function isSearched(key: KeyHistory, values: Values): boolean {
+  return (
+    isAmbiguous(key) || (kindOfKey(key) === 'counter' && findCounts(key, values).trouble === 'several-sizes')
+  )
 }
 
 /**

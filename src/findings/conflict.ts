@@ -39,6 +39,8 @@ export function findConflicts(counting: Counting, values: Values, operations: In
     const finding = findConflict(countPairs(rest, counting.rule), values, operations)
     if (!finding) break
     findings.push(finding)
+    // Of conflicts without a kind of their own a key has one.
+    if (finding.kind === 'order-conflict') break
     rest = without(rest, finding.blamed)
   }
   // Where no subset can be confirmed in the time that there is, the whole key is the evidence.

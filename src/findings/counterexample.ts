@@ -6,7 +6,7 @@
  * is left must still be broken by the decider's word; an undecided rest counts as mended.
  */
 
-import { kindOfKey } from '../deciders/decide-key.js'
+import { isAmbiguous } from '../deciders/decide-key.js'
 import { INCREMENT, type Values } from '../history/columns.js'
 import type { Counting } from '../order/counting.js'
 import { sizeOf } from '../order/counts.js'
@@ -33,7 +33,7 @@ export function findCounterexample(
   finding: RawFinding,
 ): Counterexample | undefined {
   const judge = new Judge(counting, values)
-  if (isSearched(counting)) {
+  if (counting.rule.name !== 'no-lost-updates' && isAmbiguous(counting.key)) {
     const operations = findClosedConflict(counting, values, finding)
     return operations && { operations, initialCount: undefined }
   }
@@ -66,14 +66,6 @@ export function findClosedConflict(
 
 /** Larger sets than this are not worth what shrinking them costs. */
 const MOST_SHRUNK = 1000
-
-/** Whether the key's reads do not all say what they saw, so that the evidence alone may not be enough. */
-function isSearched(counting: Counting): boolean {
-  return (
-    kindOfKey(counting.key) === 'mixed' ||
-    (!counting.key.hasIncrements && findVersions(counting.key).ambiguous >= 0)
-  )
-}
 
 function counterCounterexample(judge: Judge, finding: RawFinding): Counterexample | undefined {
   const { key } = judge

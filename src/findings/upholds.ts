@@ -2,6 +2,7 @@
  * Which promises a broken key still upholds: the strongest that hold and were put to the test.
  */
 import { decideKey } from '../deciders/decide-key.js'
+import { SMALL_BUDGET } from '../deciders/search/budget.js'
 import type { Values } from '../history/columns.js'
 import type { KeyHistory } from '../order/key-history.js'
 import type { SingleKeyPromiseName } from '../promises/promise.js'
@@ -32,7 +33,7 @@ const IMPLIES: Partial<Record<SingleKeyPromiseName, readonly SingleKeyPromiseNam
 export function upheld(key: KeyHistory, values: Values): SingleKeyPromiseName[] {
   const names = Object.keys(IMPLIES) as SingleKeyPromiseName[]
   const kept = names.filter((name) => {
-    const decision = decideKey(key, values, SINGLE_KEY[name].rule({}))
+    const decision = decideKey(key, values, SINGLE_KEY[name].rule({}), SMALL_BUDGET)
     return decision.verdict === 'holds' && !decision.untested
   })
   return kept.filter((name) => !kept.some((stronger) => IMPLIES[stronger]!.includes(name)))
