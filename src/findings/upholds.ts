@@ -2,7 +2,6 @@
  * Which promises a broken key still upholds: the strongest that hold and were put to the test.
  */
 import { decideKey } from '../deciders/decide-key.js'
-import { SMALL_BUDGET } from '../deciders/search/budget.js'
 import type { Values } from '../history/columns.js'
 import type { KeyHistory } from '../order/key-history.js'
 import type { SingleKeyPromiseName } from '../promises/promise.js'
@@ -29,11 +28,14 @@ const IMPLIES: Partial<Record<SingleKeyPromiseName, readonly SingleKeyPromiseNam
   'written-values': [],
 }
 
+/** What is not decided by then is not listed: this is told beside the verdicts, it is none. */
+const SHORT_SEARCH = { steps: 10_000 }
+
 /** Names of the strongest promises that the key upholds; empty when it upholds none. */
 export function upheld(key: KeyHistory, values: Values): SingleKeyPromiseName[] {
   const names = Object.keys(IMPLIES) as SingleKeyPromiseName[]
   const kept = names.filter((name) => {
-    const decision = decideKey(key, values, SINGLE_KEY[name].rule({}), SMALL_BUDGET)
+    const decision = decideKey(key, values, SINGLE_KEY[name].rule({}), SHORT_SEARCH)
     return decision.verdict === 'holds' && !decision.untested
   })
   return kept.filter((name) => !kept.some((stronger) => IMPLIES[stronger]!.includes(name)))
