@@ -187,3 +187,25 @@ export function grown(array: Int32Array, length: number): Int32Array<ArrayBuffer
   larger.set(array)
   return larger
 }
+
+export function copyInto(from: Configuration, to: Configuration): void {
+  to.bits.set(from.bits)
+  to.state = from.state
+  to.node = from.node
+  to.used = from.used
+}
+
+/** Whether a slot is open. */
+export function isOpen(one: Configuration, slot: number): boolean {
+  return (one.bits[slot >> 5] & (1 << (slot & 31))) !== 0
+}
+
+/** Whether a slot is among the late ones. */
+export function isLate(one: Configuration, words: number, slot: number): boolean {
+  return (one.bits[words + (slot >> 5)] & (1 << (slot & 31))) !== 0
+}
+
+/** The index of the lowest bit set. */
+export function bitIndex(bits: number): number {
+  return 31 - Math.clz32(bits & -bits)
+}

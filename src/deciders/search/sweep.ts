@@ -12,10 +12,11 @@ import type { Counting } from '../../order/counting.js'
 import { isRead, isWrite, readValue } from '../../order/roles.js'
 import { type Agenda, makeAgenda } from './agenda.js'
 import type { Purse } from './budget.js'
-import { type Configuration, Configurations } from './configurations.js'
+import { bitIndex, type Configuration, Configurations, copyInto, isLate, isOpen } from './configurations.js'
 import { Flight } from './flight.js'
 import { IMPOSSIBLE, type Machine, machineFor } from './machine.js'
 import { NO_NODE, Paths } from './paths.js'
+import { Placing } from './placing.js'
 
 /** How a search deals with unsure writes that nobody tells apart. */
 export interface Manner {
@@ -79,8 +80,7 @@ class Sweep {
   readonly #scratch: Configuration[] = []
   /** where `#hide` keeps its copy */
   readonly #aside: Configuration
-  readonly #eligible: Int32Array
-  readonly #commit: Int32Array
+  readonly #placing: Placing
   readonly #wanted = new Set<number>()
   /** the operation that must be placed now, or -1 */
   #due = -1
@@ -111,8 +111,7 @@ class Sweep {
     this.#layer = new Configurations(this.#words, breadth !== undefined)
     this.#spare = new Configurations(this.#words, breadth !== undefined)
     this.#waiting = new Configurations(this.#words, breadth !== undefined)
-    this.#eligible = new Int32Array(this.#words)
-    this.#commit = new Int32Array(this.#words)
+    this.#placing = new Placing(this.#flight, this.#machine)
     this.#hasCas = key.kind.includes(CAS)
     this.#aside = this.#makeConfiguration()
   }
@@ -246,20 +245,19 @@ class Sweep {
       next.insert(one, reads)
       return
     }
-    const isHidden = (this.#free(one, word) & bit) !== 0
+    const isHidden = (this.#placing.free(one, word) & bit) !== 0
     if (isHidden && !this.#wasHidden) this.#hide(one, due, next)
     this.#waiting.insert(one, reads)
   }
 
   /** A copy of the configuration in which a free write is hidden for good. */
   #hide(one: Configuration, p: number, next: Configurations): void {
-    this.#commit.fill(0)
-    this.#needs(one, p, this.#commit, undefined)
+    this.#placing.needs(one, p)
     const copy = this.#aside
     copyInto(one, copy)
     const slot = this.#flight.slotOf[p]
-    this.#commit[slot >> 5] |= 1 << (slot & 31)
-    this.#take(copy, this.#commit)
+    this.#placing.commit[slot >> 5] |= 1 << (slot & 31)
+    this.#placing.take(copy)
     next.insert(copy, this.#flight.reads)
   }
 
@@ -270,7 +268,7 @@ class Sweep {
     const own = this.#at(0)
     this.#waiting.load(i, own)
     const dueSlot = slotOf[this.#due]
-    this.#wasHidden = (this.#free(own, dueSlot >> 5) & (1 << (dueSlot & 31))) !== 0
+    this.#wasHidden = (this.#placing.free(own, dueSlot >> 5) & (1 << (dueSlot & 31))) !== 0
     const wantsAll = this.#findWanted(own)
     for (const w of writes) {
       if (!isOpen(own, slotOf[w])) continue
@@ -312,11 +310,11 @@ class Sweep {
     const { slotOf, writes, related } = this.#flight
     if (related[w] === 1) return false
     const { by } = this.#agenda
-    const isLate = isSet(own, this.#words, slotOf[w])
+    const isOwnLate = isLate(own, this.#words, slotOf[w])
     for (const other of writes) {
       if (other === w || related[other] === 1 || !isOpen(own, slotOf[other])) continue
       if (by[other] > by[w] || (by[other] === by[w] && other > w) || !this.#isEqual(own, other, w)) continue
-      if (!isLate || isSet(own, this.#words, slotOf[other])) return true
+      if (!isOwnLate || isLate(own, this.#words, slotOf[other])) return true
     }
     return false
   }
@@ -347,11 +345,6 @@ class Sweep {
     return this.#machine.after(own.state, a) === this.#machine.after(own.state, b)
   }
 
-  /** Whether this is an unsure write that nobody tells from others of its value. */
-  #isAlikeUnsure(p: number): boolean {
-    return this.#isByValue && this.#counting.key.acked[p] === 0 && this.#machine.isBlind(p)
-  }
-
   /** Places an unsure write that is not among the slots: the first of its value left over, or one too many. */
   #tryUncounted(own: Configuration, u: number, next: Configurations): void {
     const { key } = this.#counting
@@ -372,112 +365,18 @@ class Sweep {
     this.#purse.spent++
     const one = this.#at(1)
     copyInto(own, one)
-    if (!this.#place(one, w)) return false
+    const isUnsure = this.#counting.key.acked[w] === 0
+    const isEndless =
+      isUnsure && this.#step < this.#countedFrom && this.#isByValue && this.#machine.isBlind(w)
+    if (!this.#placing.place(one, w, isEndless)) return false
+    if (isUnsure && (this.#breadth !== undefined || this.#flight.slotOf[w] < 0) && !one.used.includes(w))
+      one.used = [...one.used, w]
     one.node = this.#paths.add(one.node, w)
     this.#answered = false
     // A blind write that nobody sees might as well be hidden before the next one.
     const isSeen = w === this.#due || !this.#machine.isBlind(w) || this.#counting.key.hasIncrements
     this.#settle(1, next, isSeen)
     return true
-  }
-
-  /** Places a write. False: something must come before it, or the copy could not have answered so. */
-  #place(one: Configuration, w: number): boolean {
-    const state = this.#machine.after(one.state, w)
-    if (state === IMPOSSIBLE) return false
-    const words = this.#words
-    const { hideable, slotOf, related, relations } = this.#flight
-    const isBlind = this.#machine.isBlind(w)
-    const commit = this.#commit
-    commit.fill(0)
-    const eligible = this.#eligible
-    if (isBlind) this.#findEligible(one, w)
-    if ((relations > 0 || related[w] === 1) && !this.#needs(one, w, commit, isBlind ? eligible : undefined))
-      return false
-    const slot = slotOf[w]
-    if (slot >= 0) {
-      const isEndless = this.#step < this.#countedFrom && this.#isAlikeUnsure(w)
-      if (!isEndless) commit[slot >> 5] |= 1 << (slot & 31)
-    }
-    if (this.#counting.key.acked[w] === 0 && (this.#breadth !== undefined || slot < 0)) {
-      if (!one.used.includes(w)) one.used = [...one.used, w]
-    }
-    this.#take(one, commit)
-    // Whatever could have been hidden before it may be thought of as hidden from now on.
-    if (isBlind) for (let b = 0; b < words; b++) one.bits[words + b] &= ~(eligible[b] & hideable[b])
-    one.state = state
-    if (relations > 0) this.#delay(one, w)
-    return true
-  }
-
-  /** What must come after a write that shows, or after one that is late, cannot be hidden before the last blind write. */
-  #delay(one: Configuration, shown: number): void {
-    const { slotOf, writes } = this.#flight
-    const words = this.#words
-    for (const other of writes) {
-      const before = this.#flight.before(other)
-      if (!before || !isOpen(one, slotOf[other])) continue
-      let isLate = slotOf[shown] >= 0 && (before[slotOf[shown] >> 5] & (1 << (slotOf[shown] & 31))) !== 0
-      for (let b = 0; b < words && !isLate; b++) isLate = (before[b] & one.bits[words + b]) !== 0
-      if (isLate) one.bits[words + (slotOf[other] >> 5)] |= 1 << (slotOf[other] & 31)
-    }
-  }
-
-  /** Which open writes could stand directly before blind write `w`. */
-  #findEligible(one: Configuration, w: number): void {
-    const { hideable, slotOf, writes, relations } = this.#flight
-    const eligible = this.#eligible
-    if (relations === 0) {
-      for (let b = 0; b < this.#words; b++) eligible[b] = one.bits[b] & hideable[b]
-      if (slotOf[w] >= 0) eligible[slotOf[w] >> 5] &= ~(1 << (slotOf[w] & 31))
-      return
-    }
-    eligible.fill(0)
-    for (const other of writes) {
-      const slot = slotOf[other]
-      const [word, bit] = [slot >> 5, 1 << (slot & 31)]
-      if (other === w || (hideable[word] & bit) === 0 || (one.bits[word] & bit) === 0) continue
-      const before = this.#flight.before(other)
-      let fits = true
-      if (before) {
-        for (let b = 0; b < this.#words && fits; b++) {
-          if ((before[b] & one.bits[b] & ~(eligible[b] | this.#free(one, b))) !== 0) fits = false
-        }
-      }
-      if (fits) eligible[word] |= bit
-    }
-  }
-
-  /**
-   * Adds to `commit` the open writes that must be hidden before `p` is placed; false where something open cannot be.
-   * `eligible`: what can be hidden directly before it, beside what is free.
-   */
-  #needs(one: Configuration, p: number, commit: Int32Array, eligible: Int32Array | undefined): boolean {
-    const before = this.#flight.before(p)
-    if (!before) return true
-    for (let word = 0; word < this.#words; word++) {
-      let bits = before[word] & one.bits[word] & ~commit[word]
-      const may = this.#free(one, word) | (eligible ? eligible[word] : 0)
-      if ((bits & ~may) !== 0) return false
-      for (; bits !== 0; bits &= bits - 1) {
-        const slot = word * 32 + bitIndex(bits)
-        commit[word] |= 1 << (slot & 31)
-        if (!this.#needs(one, this.#flight.at[slot], commit, eligible)) return false
-      }
-    }
-    return true
-  }
-
-  /** Open writes that may be thought of as hidden, a word of them. */
-  #free(one: Configuration, word: number): number {
-    return one.bits[word] & ~one.bits[this.#words + word] & this.#flight.hideable[word]
-  }
-
-  #take(one: Configuration, slots: Int32Array): void {
-    for (let b = 0; b < this.#words; b++) {
-      one.bits[b] &= ~slots[b]
-      one.bits[this.#words + b] &= ~slots[b]
-    }
   }
 
   /**
@@ -497,9 +396,8 @@ class Sweep {
           const r = at[word * 32 + bitIndex(bits)]
           const state = this.#machine.read(one.state, r)
           if (state === IMPOSSIBLE) continue
-          this.#commit.fill(0)
-          if (!this.#needs(one, r, this.#commit, undefined)) continue
-          if (state !== one.state || this.#commit.some((b) => b !== 0)) {
+          if (!this.#placing.needs(one, r)) continue
+          if (state !== one.state || this.#placing.commit.some((b) => b !== 0)) {
             costly.push(r)
             continue
           }
@@ -511,9 +409,8 @@ class Sweep {
     for (const r of costly) {
       const copy = this.#at(depth + 1)
       copyInto(one, copy)
-      this.#commit.fill(0)
-      this.#needs(copy, r, this.#commit, undefined)
-      this.#take(copy, this.#commit)
+      this.#placing.needs(copy, r)
+      this.#placing.take(copy)
       copy.state = this.#machine.read(one.state, r)
       const answered = this.#answered
       this.#answer(copy, r)
@@ -558,25 +455,4 @@ class Sweep {
     const nodes = this.#paths.tidy(live.map((i) => layer.nodeOf(i)))
     for (let k = 0; k < live.length; k++) layer.setNode(live[k], nodes[k])
   }
-}
-
-function copyInto(from: Configuration, to: Configuration): void {
-  to.bits.set(from.bits)
-  to.state = from.state
-  to.node = from.node
-  to.used = from.used
-}
-
-function isOpen(one: Configuration, slot: number): boolean {
-  return (one.bits[slot >> 5] & (1 << (slot & 31))) !== 0
-}
-
-/** Whether a slot is among the late ones. */
-function isSet(one: Configuration, words: number, slot: number): boolean {
-  return (one.bits[words + (slot >> 5)] & (1 << (slot & 31))) !== 0
-}
-
-/** The index of the lowest bit set. */
-function bitIndex(bits: number): number {
-  return 31 - Math.clz32(bits & -bits)
 }
