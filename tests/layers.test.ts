@@ -54,4 +54,16 @@ describe('the arrows between folders', () => {
     )
     expect(wrong).toEqual([])
   })
+
+  it('keep the verifier of certificates apart from all that decides', () => {
+    const verifier = files.filter((name) => name.startsWith('certificates/verify/'))
+    expect(verifier.length).toBeGreaterThan(5)
+    const allowed = /^(history\/|certificates\/verify\/|certificates\/schema\.js$|promises\/glob\.js$)/
+    const wrong = verifier.flatMap((file) =>
+      valueImports(file)
+        .filter((target) => !allowed.test(target))
+        .map((target) => `${file} imports ${target}`),
+    )
+    expect(wrong).toEqual([])
+  })
 })
